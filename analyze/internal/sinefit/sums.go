@@ -121,3 +121,28 @@ func Subtract(y []float64, dc float64, nu []float64, z []complex128) {
 		}
 	}
 }
+
+// Oscillator takes one line of nearly constant frequency off successive
+// stretches of samples; its table is made once for a frequency.
+type Oscillator struct {
+	nu  float64
+	set bool
+	tab table
+}
+
+// Piece is the longest stretch that Subtract of an Oscillator takes.
+const Piece = chunk
+
+// Subtract takes Re(z exp(j 2 pi nu i)), i = 0 .. len(y)-1, off y, at most
+// Piece samples.
+func (o *Oscillator) Subtract(y []float64, nu float64, z complex128) {
+	if !o.set || o.nu != nu {
+		o.tab.fill(nu)
+		o.nu, o.set = nu, true
+	}
+	wr, wi := real(z), imag(z)
+	re, im := o.tab.re[:len(y)], o.tab.im[:len(y)]
+	for i := range y {
+		y[i] -= wr*re[i] - wi*im[i]
+	}
+}

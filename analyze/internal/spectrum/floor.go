@@ -61,8 +61,9 @@ type Peak struct {
 
 // Peaks lists lines that rise over the floor by more than factor (power
 // density), strongest first. One line gives one peak: maxima within a main
-// lobe of a stronger one are left out, and so are those that a window's
-// sidelobes 92 dB below a stronger line could explain.
+// lobe of a stronger one are left out, and so are those that the sidelobes of
+// a stronger one could explain: 6 dB over -92 dB, beyond ten bins falling by
+// 6 dB an octave (Blackman-Harris, 4 terms).
 func (d *Density) Peaks(floor []float64, factor float64) []Peak {
 	var peaks []Peak
 	n := len(d.S)
@@ -74,15 +75,23 @@ func (d *Density) Peaks(floor []float64, factor float64) []Peak {
 	}
 	sort.SliceStable(peaks, func(a, b int) bool { return peaks[a].Power > peaks[b].Power })
 	var out []Peak
+	lobe := d.Lobe * d.StepHz
 next:
 	for _, p := range peaks {
-		for _, q := range out {
+		for i, q := range out {
 			gap := math.Abs(p.Hz - q.Hz)
-			if gap < d.Lobe*d.StepHz || (p.Power < q.Power*2e-9 && gap < 40*d.Lobe*d.StepHz) {
+			if gap < lobe {
+				continue next
+			}
+			if i >= 40 || p.Power > q.Power*2.5e-9 {
+				continue
+			}
+			far := math.Min(gap, math.Min(p.Hz+q.Hz, 2*(d.RateHz/2)-p.Hz-q.Hz)) / (lobe / 4)
+			if p.Power < q.Power*2.5e-9*math.Min(1, 100/(far*far)) {
 				continue next
 			}
 		}
-		if len(out) > 4000 {
+		if len(out) >= 1000 {
 			break
 		}
 		out = append(out, p)

@@ -1,0 +1,256 @@
+package stage
+
+import (
+	"math"
+	"sort"
+
+	"benchslip/analyze/internal/sinefit"
+	"benchslip/analyze/internal/spectrum"
+)
+
+// residual is the density of the signal less DC and every fitted line.
+// Segments of an eighth of the span, 2 s at most, three quarters overlapped:
+// with that overlap every sample but those at the two ends counts alike.
+func (l *Lines) residual() *spectrum.Density {
+	s := l.Sig
+	n := s.Len()
+	m := spectrum.FastLength(max(min(int(2*s.RateHz), n/8), min(n, 64)))
+	hop := max(m/4, 1)
+	w := spectrum.BlackmanHarris(m)
+	power, count := 0.0, 0
+	r := l.newRemover()
+	src := func(dst []float64, at int) int {
+		k := s.Read(dst, at)
+		r.take(dst[:k], at)
+		for _, v := range dst[:k] {
+			power += v * v
+		}
+		count += k
+		return k
+	}
+	d := spectrum.Welch(src, n, s.RateHz, w, m, hop)
+	rest := make([]float64, 4096) // the tail that fills no segment
+	for count < n {
+		if src(rest, count) == 0 {
+			break
+		}
+	}
+	if count > 0 {
+		l.Residual = power / float64(count)
+	}
+	l.scale(d)
+	return d
+}
+
+// scale makes the density integrate to the mean square over the whole span
+// (every sample counted alike, tapered ends too).
+func (l *Lines) scale(d *spectrum.Density) {
+	sum := 0.0
+	for _, v := range d.S {
+		sum += v * d.StepHz
+	}
+	if sum > 0 && l.Residual > 0 {
+		r := l.Residual / sum
+		if r > 0.5 && r < 2 {
+			for k := range d.S {
+				d.S[k] *= r
+			}
+		}
+	}
+}
+
+// remover takes DC and all lines off samples read in order.
+type remover struct {
+	l     *Lines
+	lines []*Line
+	fixed []bool // one phasor and frequency for the whole span
+	osc   []sinefit.Oscillator
+	block int
+}
+
+func (l *Lines) newRemover() *remover {
+	r := &remover{l: l, lines: l.all()}
+	r.osc = make([]sinefit.Oscillator, len(r.lines))
+	for _, q := range r.lines {
+		r.fixed = append(r.fixed, q.track.Rigid && !l.isMains(q) && l.constant(q))
+	}
+	return r
+}
+
+// take works on samples that start at index at.
+func (r *remover) take(y []float64, at int) {
+	l := r.l
+	for i := range y {
+		y[i] -= l.DC
+	}
+	for from := 0; from < len(y); from += sinefit.Piece {
+		part := y[from:min(from+sinefit.Piece, len(y))]
+		first := at + from
+		for first < l.Blocks[r.block].From {
+			r.block--
+		}
+		for first >= l.Blocks[r.block].To {
+			r.block++
+		}
+		middle := l.Blocks[r.block].Middle()
+		half := float64(len(part)-1) / 2
+		for i, q := range r.lines {
+			order := float64(q.Order)
+			if r.fixed[i] {
+				z := q.Z * sinefit.Phasor(q.track.OrderTurns(order, float64(first)))
+				r.osc[i].Subtract(part, order*q.track.Nu, z)
+				continue
+			}
+			// Phase exact at the stretch's middle, frequency that of the block.
+			nu := order * q.track.NuAt(middle)
+			mid := float64(first) + half
+			turn := q.track.OrderTurns(order, mid) - nu*half
+			r.osc[i].Subtract(part, nu, l.between(q.Blocks, mid)*sinefit.Phasor(turn))
+		}
+	}
+}
+
+// constant: the line's phasor scatters no more than noise from block to block.
+func (l *Lines) constant(q *Line) bool { return len(l.Blocks) < 3 || !q.wanders(l) }
+
+// wanders compares the blocks' phasors with their mean using the scatter
+// between neighbours as the noise: a wandering line moves further over the
+// span than from one block to the next.
+func (q *Line) wanders(l *Lines) bool {
+	step, away := 0.0, 0.0
+	for m, z := range q.Blocks {
+		away += abs2(z - q.Z)
+		if m > 0 {
+			step += abs2(z-q.Blocks[m-1]) / 2
+		}
+	}
+	n := float64(len(q.Blocks))
+	away /= n - 1
+	step /= n - 1
+	if away < 1e-22*abs2(q.Z) {
+		return false
+	}
+	// von Neumann ratio: 1 +- 1/sqrt(n) for noise.
+	return away > step*(1+5/math.Sqrt(n))
+}
+
+// between interpolates phasors given at the blocks' middles.
+func (l *Lines) between(z []complex128, i float64) complex128 {
+	n := len(l.Blocks)
+	if n == 1 {
+		return z[0]
+	}
+	m := sort.Search(n, func(k int) bool { return l.Blocks[k].Middle() > i })
+	m = max(1, min(m, n-1))
+	a, b := l.Blocks[m-1].Middle(), l.Blocks[m].Middle()
+	f := (i - a) / (b - a)
+	f = math.Max(0, math.Min(1, f))
+	return z[m-1]*complex(1-f, 0) + z[m]*complex(f, 0)
+}
+
+// fill replaces the density at every fitted line, where the fit took noise
+// away too, by the mean of its sides; about the fundamental over the gap.
+func (l *Lines) fill() {
+	d := l.Noise
+	T := l.Sig.DurationS()
+	n := len(d.S)
+	touched := make([]bool, n)
+	half := d.Lobe + 1
+	touch := func(hz, widthHz float64) {
+		lo := int(math.Ceil((hz - widthHz) / d.StepHz))
+		hi := int(math.Floor((hz + widthHz) / d.StepHz))
+		for k := max(lo, 0); k <= min(hi, n-1); k++ {
+			touched[k] = true
+		}
+	}
+	fine := d.RBW() < 4 // Hz: narrow enough to leave sides between the lines
+	if fine {
+		for _, q := range l.all() {
+			touch(q.Hz, half*d.StepHz)
+		}
+	}
+	if f := l.Fundamental(); f != nil {
+		l.GapHz = math.Max(2, 4/T)
+		if fine || !f.track.Rigid {
+			touch(f.Hz, math.Max(l.GapHz, half*d.StepHz))
+		} else {
+			l.GapHz = 0
+		}
+	}
+	if !fine {
+		l.restore()
+	}
+	// Each touched run takes the mean of as many bins on either side.
+	for k := 0; k < n; k++ {
+		if !touched[k] {
+			continue
+		}
+		end := k
+		for end < n && touched[end] {
+			end++
+		}
+		want := max(end-k, int(4*half))
+		sum, count := 0.0, 0
+		for i, got := k-1, 0; i >= 1 && got < want && k-i < 6*want; i-- {
+			if !touched[i] {
+				sum += d.S[i]
+				count++
+				got++
+			}
+		}
+		for i, got := end, 0; i < n && got < want && i-end < 6*want; i++ {
+			if !touched[i] {
+				sum += d.S[i]
+				count++
+				got++
+			}
+		}
+		if count > 0 {
+			for i := k; i < end; i++ {
+				d.S[i] = sum / float64(count)
+			}
+		}
+		k = end
+	}
+}
+
+// restore puts back, on average, the noise that fitting took away where lines
+// are too dense to read their sides: each line takes 1/T_b Hz, shared over the
+// resolution bandwidth of the density.
+func (l *Lines) restore() {
+	d := l.Noise
+	b := l.Blocks[0]
+	took := l.Sig.RateHz / float64(b.To-b.From)
+	lost := make([]float64, len(d.S))
+	lines := l.all()
+	spread := int(d.Lobe)
+	for _, q := range lines {
+		k := int(q.Hz/d.StepHz + 0.5)
+		width := 2*spread + 1
+		for i := k - spread; i <= k+spread; i++ {
+			if i >= 0 && i < len(lost) {
+				lost[i] += took / (float64(width) * d.StepHz)
+			}
+		}
+	}
+	for i, v := range lost {
+		if v > 0 && v < 0.9 {
+			d.S[i] /= 1 - v
+		}
+	}
+}
+
+// DensityAt is the noise density at hz: the median over bins at its sides,
+// bias removed, from the density without lines.
+func (l *Lines) DensityAt(hz float64) float64 {
+	d := l.Noise
+	k := int(hz/d.StepHz + 0.5)
+	half := max(int(3*d.Lobe), min(int(25/d.StepHz), 200))
+	lo, hi := max(k-half, 1), min(k+half+1, len(d.S))
+	if hi-lo < 3 {
+		lo, hi = max(0, min(lo, len(d.S)-3)), len(d.S)
+	}
+	v := append([]float64(nil), d.S[lo:hi]...)
+	sort.Float64s(v)
+	return v[len(v)/2] / spectrum.MedianBias(d.Averages)
+}
