@@ -15,6 +15,8 @@ type channel struct {
 	bits   int // valid bits of an integer format; 0: none
 	all    moments
 	codes  codes
+	match  *matcher
+	zeros  zeros
 
 	top, bottom rail    // runs at the largest and smallest sample
 	one, minus  rail    // float formats: runs at exactly +1 and -1
@@ -28,10 +30,15 @@ func newChannel(in *recording.Info, c int) *channel {
 		ch.bits = in.Channels[c].Bits
 	}
 	ch.codes = newCodes(ch.bits)
+	ch.match = newMatcher()
+	ch.zeros.limit = max(maxLag, int64(maxGap*in.RateHz))
+	ch.zeros.step = in.Channels[c].Step
 	return ch
 }
 
-func (ch *channel) feed(x []float64, at int64) {
+// feed takes w = history frames followed by a cell that starts at frame at.
+func (ch *channel) feed(w []float64, at int64) {
+	x := w[history:]
 	m := momentsOf(x)
 	ch.all.join(m)
 	ch.top.feed(x, at, m.max)
@@ -41,6 +48,10 @@ func (ch *channel) feed(x []float64, at int64) {
 		ch.minus.feed(x, at, -m.min)
 	}
 	ch.codes.feed(x)
+	ch.match.feed(w, at)
+	if ch.fs {
+		ch.zeros.feed(x, at, m.min, m.max)
+	}
 }
 
 // close ends what is open and settles which runs are at full scale.
@@ -49,7 +60,8 @@ func (ch *channel) feed(x []float64, at int64) {
 // -2^(b-1) or 2^(b-1)-1; since no sample lies beyond it, its runs are those
 // of the largest or smallest sample. A 16-bit take in a 24-bit file has b =
 // 16. Volts have no full scale that the file tells.
-func (ch *channel) close() {
+func (ch *channel) close(frames int64) {
+	ch.match.end(frames)
 	for _, r := range []*rail{&ch.top, &ch.bottom, &ch.one, &ch.minus} {
 		r.end()
 	}
@@ -71,6 +83,11 @@ func (ch *channel) close() {
 			i--
 		}
 	}
+}
+
+// atFullScale says whether the runs of r, top or bottom, are clipped ones.
+func (ch *channel) atFullScale(r *rail) bool {
+	return slices.Contains(ch.full, r) || ch.fs && ch.bits == 0 && r.value == 1
 }
 
 // narrow is the width of the converter behind a wider file: the bits in use,

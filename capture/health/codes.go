@@ -111,21 +111,35 @@ func (c *codes) values() []float64 {
 	return v
 }
 
-// step is the distance of neighbouring values: their median spacing, which
-// digital gain after the converter and decimal rounding leave in place. With
-// too many values for that, the lowest bit in use. 0: none to be seen.
+// step is the distance of neighbouring values: the median of their spacings
+// where three in four lie within 30 % of it, which digital gain after the
+// converter and decimal rounding leave in place. Uneven spacings are no
+// steps: a tone in step with the sample rate visits few values, but not even
+// ones. Then, and with too many values, it is the lowest bit in use. 0: none
+// to be seen.
 func (c *codes) step() float64 {
+	grid := 0.0
+	if used := c.used(); used > 0 {
+		grid = math.Ldexp(1, 1-used)
+	}
 	v := c.values()
-	if len(v) < 2 {
-		if c.full && c.used() > 0 {
-			return math.Ldexp(1, 1-c.used())
+	if len(v) < 3 {
+		return grid
+	}
+	d := make([]float64, len(v)-1)
+	for i := range d {
+		d[i] = v[i+1] - v[i]
+	}
+	slices.Sort(d)
+	mid := d[len(d)/2]
+	even := 0
+	for _, e := range d {
+		if math.Abs(e-mid) <= 0.3*mid {
+			even++
 		}
-		return 0
 	}
-	for i := range v[1:] {
-		v[i] = v[i+1] - v[i]
+	if 4*even < 3*len(d) {
+		return grid
 	}
-	v = v[:len(v)-1]
-	slices.Sort(v)
-	return v[len(v)/2]
+	return mid
 }

@@ -22,6 +22,7 @@ type rail struct {
 	sign  float64
 	fixed bool    // value stands; else it is the largest seen
 	value float64 // sign * sample
+	first int64   // frame where value was first met
 
 	open    int64 // first frame of the run that goes on
 	n       int64 // its samples so far
@@ -32,15 +33,17 @@ type rail struct {
 	longest recording.Run
 }
 
-func newRail(sign float64) rail { return rail{sign: sign, value: math.Inf(-1)} }
+func newRail(sign float64) rail { return rail{sign: sign, value: math.Inf(-1), first: -1} }
 
-func fixedRail(sign, value float64) rail { return rail{sign: sign, fixed: true, value: value} }
+func fixedRail(sign, value float64) rail {
+	return rail{sign: sign, fixed: true, value: value, first: -1}
+}
 
 // feed takes a cell that starts at frame at and whose largest sign * sample
 // is top.
 func (r *rail) feed(x []float64, at int64, top float64) {
 	if top > r.value && !r.fixed {
-		*r = rail{sign: r.sign, value: top}
+		*r = rail{sign: r.sign, value: top, first: -1}
 	}
 	if top < r.value || math.IsInf(top, -1) {
 		r.end()
@@ -56,6 +59,9 @@ func (r *rail) feed(x []float64, at int64, top float64) {
 		}
 		if r.n == 0 {
 			r.open = at + int64(i)
+			if r.first < 0 {
+				r.first = r.open
+			}
 		}
 		r.n++
 	}

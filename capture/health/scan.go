@@ -2,6 +2,7 @@ package health
 
 import (
 	"fmt"
+	"math"
 
 	"benchslip/capture/recording"
 )
@@ -59,7 +60,10 @@ func scan(rec recording.Recording, block int) (*Report, error) {
 	buf := make([][]float64, len(chans))
 	for c := range chans {
 		chans[c] = newChannel(in, c)
-		buf[c] = make([]float64, block)
+		buf[c] = make([]float64, history+block)
+		for i := range history {
+			buf[c][i] = math.NaN()
+		}
 	}
 	same := newTwins(len(chans))
 
@@ -71,22 +75,47 @@ func scan(rec recording.Recording, block int) (*Report, error) {
 		}
 		for k := 0; k < n; k += cell {
 			for c := range part {
-				part[c] = buf[c][k:min(k+cell, n)]
-				chans[c].feed(part[c], at+int64(k))
+				w := buf[c][k:min(k+history+cell, history+n)]
+				part[c] = w[history:]
+				chans[c].feed(w, at+int64(k))
 			}
 			same.feed(part)
+		}
+		for c := range buf {
+			copy(buf[c], buf[c][n:n+history])
 		}
 		at += int64(n)
 	}
 
 	r := &Report{}
 	for _, ch := range chans {
-		ch.close()
+		ch.close(in.Frames)
 		r.Levels = append(r.Levels, ch.level())
 		r.clips = append(r.clips, ch.clips())
 	}
 	for c, ch := range chans {
 		r.add(clippedFlag(in, c, ch))
+	}
+	g := again{rec, in}
+	var events []event
+	for _, ch := range chans {
+		for _, look := range []func(again, *channel) ([]event, error){repeats, gaps} {
+			e, err := look(g, ch)
+			if err != nil {
+				return nil, err
+			}
+			events = append(events, e...)
+		}
+	}
+	r.Flags = append(r.Flags, eventFlags(in, events)...)
+	for _, look := range []func(again, int, *channel) (*recording.Flag, error){flatTopFlag, fewCodesFlag} {
+		for c, ch := range chans {
+			f, err := look(g, c, ch)
+			if err != nil {
+				return nil, err
+			}
+			r.add(f)
+		}
 	}
 	for c, ch := range chans {
 		r.add(silentFlag(in, c, ch))
@@ -103,12 +132,13 @@ func (r *Report) add(f *recording.Flag) {
 	}
 }
 
-// fill reads want frames from frame at into buf; part is scratch.
+// fill reads want frames from frame at into buf, after the history; part is
+// scratch.
 func fill(rec recording.Recording, buf, part [][]float64, at, want int64) (int, error) {
 	got := int64(0)
 	for got < want {
 		for c := range buf {
-			part[c] = buf[c][got:want]
+			part[c] = buf[c][history+got : history+want]
 		}
 		n, err := rec.ReadAt(part, at+got)
 		if err != nil {
