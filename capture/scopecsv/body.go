@@ -1,0 +1,457 @@
+package scopecsv
+
+import (
+	"bytes"
+	"fmt"
+	"math"
+
+	"benchslip/capture/num"
+	"benchslip/capture/recording"
+)
+
+// column is one column of the table as it was read.
+type column struct {
+	v      []float64 // one value a row; NaN where there is none
+	lost   []lost    // where and why there is none
+	count  [prose + 1]int
+	last   int // power of ten of the finest digit printed
+	digits int // most significant digits printed
+	whole  bool
+	unit   string // unit glued to the numbers
+	glued  int    // how many cells had one
+	bare   int    // how many numbers other than zero had none while others had
+	bareAt int    // line of the first of them
+	text   int    // line of the first cell of text
+	say    string // that text
+	q      float64
+	dates  int // clock cells with a date
+	times  int // clock cells with a time
+}
+
+// lost is a run of rows [from, to) without a value.
+type lost struct {
+	from, to int
+	kind     kind
+	why      string
+	line     int
+}
+
+// breach is a place where text or blank rows stand among the samples: before
+// row at.
+type breach struct {
+	at    int
+	line  int
+	rows  []row // text rows, at most 64 kept
+	count int   // all rows
+	blank int   // blank rows
+}
+
+// body is the table read.
+type body struct {
+	col      []column
+	n        int
+	breaches []breach
+	jumps    []jump // where line number - row changes
+	endLine  int
+	cut      int // line of a last row that was cut off and left out; 0: none
+	footer   []row
+	short    int // line from which rows end early
+	nuls     int
+}
+
+// jump says that rows from row on stand at lines row + off.
+type jump struct{ row, off int }
+
+// lineOf is the line of row n.
+func (t *body) lineOf(n int) int {
+	off := 0
+	for _, j := range t.jumps {
+		if j.row > n {
+			break
+		}
+		off = j.off
+	}
+	return n + off
+}
+
+const odd = 64 // at most so many irregular cells of a row are looked at one by one
+
+type oddCell struct {
+	c int
+	cell
+}
+
+// scan reads the rows of samples into columns. A cell that is a plain number
+// or blank is read in place; anything else goes through style.read. The time
+// is linear in the text: every byte is seen a bounded number of times.
+func (f *file) scan(lay *layout) (*body, error) {
+	t := &body{col: make([]column, lay.width)}
+	for c := range t.col {
+		t.col[c].last = math.MaxInt
+		t.col[c].whole = true
+	}
+	var (
+		b      = f.text
+		p      = lay.start
+		line   = lay.line
+		w      = lay.width
+		last   = make([]int, w)
+		digits = make([]int, w)
+		room   = 0
+		odds   []oddCell
+		open   *breach
+		budget = len(b) - p + w
+		off    = math.MinInt
+	)
+	for p < len(b) {
+		if t.n == room {
+			room = max(1024, room+room/2)
+			for c := range t.col {
+				grown := make([]float64, room)
+				copy(grown, t.col[c].v[:t.n])
+				t.col[c].v = grown
+			}
+		}
+		rowStart, rowLines := p, 1
+		for p < len(b) && b[p] == 0 {
+			p++
+			t.nuls++
+		}
+		c, plain, wide := 0, 0, false
+		odds = odds[:0]
+		for {
+			// One cell from p; after it p stands at its separator or line end.
+			for p < len(b) && (b[p] == ' ' || b[p] == '\t' && lay.sep != '\t') {
+				p++
+			}
+			if lay.sep == ' ' && (p == len(b) || b[p] == '\n' || b[p] == '\r') {
+				break
+			}
+			from := p
+			d, n := num.Scan(b[p:], lay.mark)
+			q := p + n
+			for q < len(b) && b[q] == ' ' {
+				q++
+			}
+			atEnd := q == len(b) || b[q] == '\n' || b[q] == '\r'
+			if !atEnd && b[q] != lay.sep && !(lay.sep == ' ' && (q > p+n || b[q] == '\t')) {
+				// not a plain number: find the end of the cell
+				lineText, _ := lineAt(b, from)
+				q = from + cellEnd(lineText, 0, lay.sep)
+				if bytes.IndexByte(b[from:min(q, len(b))], '"') >= 0 && q == from+len(lineText) {
+					// quotes may span lines
+					joined, _, lines := logicalLine(b, rowStart)
+					if end := rowStart + len(joined); end > q {
+						q = from + cellEnd(b[from:end], 0, lay.sep)
+						rowLines = lines
+					}
+				}
+				if q-from > maxField {
+					return nil, f.fault(line, recording.ErrUnsupported, fmt.Sprintf("a cell of %d bytes; cells are read up to %d", q-from, maxField), "export the samples as a table")
+				}
+				n = -1
+			}
+			switch {
+			case c >= w:
+				if n != 0 && lay.read(b[from:q]).kind != blank {
+					wide = true
+				}
+			case n > 0 && d.V < overrange && d.V > -overrange:
+				t.col[c].v[t.n] = d.V
+				last[c], digits[c] = d.Last, d.Digits
+				plain++
+			case n == 0:
+				t.col[c].v[t.n] = math.NaN()
+				odds = append(odds, oddCell{c, cell{kind: blank}})
+			default:
+				t.col[c].v[t.n] = math.NaN()
+				odds = append(odds, oddCell{c, lay.read(b[from:q])})
+			}
+			c++
+			p = q
+			if p-rowStart > maxRow {
+				return nil, f.fault(line, recording.ErrUnsupported, fmt.Sprintf("a row of over %d bytes", maxRow), "export one record a row")
+			}
+			if p >= len(b) || b[p] == '\n' || b[p] == '\r' {
+				break
+			}
+			if lay.sep != ' ' {
+				p++ // the separator
+				if p == len(b) {
+					break
+				}
+			}
+		}
+		rowEnd := p
+		ended := p < len(b)
+		p = lineEnd(b, p)
+		thisLine := line
+		line += rowLines
+
+		if len(odds) == 0 && c >= w && !wide {
+			if open != nil {
+				open = nil
+			}
+			if thisLine-t.n != off {
+				off = thisLine - t.n
+				t.jumps = append(t.jumps, jump{t.n, off})
+			}
+			for c := range t.col {
+				k := &t.col[c]
+				k.count[number]++
+				k.last = min(k.last, last[c])
+				k.digits = max(k.digits, digits[c])
+				k.whole = k.whole && last[c] >= 0
+				if k.glued > 0 && k.v[t.n] != 0 {
+					k.noteBare(thisLine)
+				}
+			}
+			t.n++
+			continue
+		}
+
+		// An irregular row: samples with cells missing, blank, or text.
+		what := lay.judge(odds, plain, c, wide)
+		if what == isSamples && (c < w || wide) {
+			switch {
+			case wide:
+				return nil, f.wideRow(lay, thisLine, b[rowStart:rowEnd])
+			case !ended && t.n > 1:
+				t.cut = thisLine
+				what = isNothing
+				if open == nil {
+					continue
+				}
+			case t.short == 0:
+				t.short = thisLine
+			}
+		}
+		if what != isSamples {
+			if open == nil {
+				t.breaches = append(t.breaches, breach{at: t.n, line: thisLine})
+				open = &t.breaches[len(t.breaches)-1]
+			}
+			open.count++
+			if what == isNothing {
+				open.blank++
+			} else if len(open.rows) < 64 {
+				open.rows = append(open.rows, row{thisLine, b[rowStart:rowEnd]})
+			}
+			continue
+		}
+		open = nil
+		if t.short > 0 && c >= w && t.short != thisLine {
+			return nil, f.fault(t.short, recording.ErrAmbiguous, fmt.Sprintf("this row has fewer cells than the %d of the others", w), "mend or remove the row: it cannot be told which cell is lost")
+		}
+		if budget -= w - min(c, w); t.n*w > budget {
+			return nil, f.fault(thisLine, recording.ErrFormat, fmt.Sprintf("most rows have fewer cells than the %d expected", w), "export the samples as a table")
+		}
+		if thisLine-t.n != off {
+			off = thisLine - t.n
+			t.jumps = append(t.jumps, jump{t.n, off})
+		}
+		next := 0
+		for i := range t.col {
+			k := &t.col[i]
+			switch {
+			case next < len(odds) && odds[next].c == i:
+				f.storeOdd(k, &odds[next].cell, t.n, thisLine)
+				next++
+			case i >= c:
+				k.v[t.n] = math.NaN()
+				k.count[blank]++
+				k.lose(t.n, blank, "blank", thisLine)
+			default:
+				k.count[number]++
+				k.last = min(k.last, last[i])
+				k.digits = max(k.digits, digits[i])
+				k.whole = k.whole && last[i] >= 0
+				if k.glued > 0 && k.v[t.n] != 0 {
+					k.noteBare(thisLine)
+				}
+			}
+		}
+		t.n++
+	}
+	t.endLine = line
+	for c := range t.col {
+		t.col[c].v = t.col[c].v[:t.n]
+	}
+	f.closeBody(t)
+	return t, nil
+}
+
+// verdicts of judge.
+const (
+	isSamples = iota
+	isNothing
+	isText
+)
+
+// judge says whether an irregular row holds samples, nothing, or text.
+func (lay *layout) judge(odds []oddCell, plain, c int, wide bool) int {
+	holds, proseCore, firstProse, any := plain, false, false, plain > 0
+	coreHolds := 0
+	next := 0
+	for i := 0; i < min(c, lay.width); i++ {
+		k := number
+		if next < len(odds) && odds[next].c == i {
+			k = odds[next].kind
+			next++
+			if k.holds() {
+				holds++
+			}
+		}
+		if k != blank {
+			any = true
+		}
+		if lay.core[i] {
+			if k.holds() {
+				coreHolds++
+			}
+			if k == prose {
+				proseCore = true
+				if i == lay.first {
+					firstProse = true
+				}
+			}
+		}
+	}
+	switch {
+	case !any && !wide:
+		return isNothing
+	case firstProse, proseCore && coreHolds == 0:
+		return isText
+	case coreHolds == 0:
+		if wide || holds == 0 {
+			return isText
+		}
+	}
+	return isSamples
+}
+
+// storeOdd stores a cell that is no plain number.
+func (f *file) storeOdd(k *column, c *cell, n, line int) {
+	k.count[c.kind]++
+	switch c.kind {
+	case number:
+		q, factor := unitOf(c.unit)
+		if c.unit != "" {
+			if p, ok := prefix(c.unit); ok && q != seconds {
+				factor = p
+				k.unit = pick(k.unit, "")
+			} else {
+				k.unit = pick(k.unit, c.unit)
+			}
+			if q == other && factor == 0 {
+				factor = 1
+			}
+			if k.glued == 0 && k.count[number] > 1 {
+				k.bare, k.bareAt = k.count[number]-1, line
+			}
+			k.glued++
+		} else {
+			factor = 1
+			if k.glued > 0 && c.V != 0 {
+				k.noteBare(line)
+			}
+		}
+		k.v[n] = c.V * factor
+		if factor != 1 {
+			k.v[n] = scaled(c.V, factor)
+		}
+		exp := c.Last
+		if factor != 1 {
+			exp += int(math.Round(math.Log10(factor)))
+		}
+		k.last = min(k.last, exp)
+		k.digits = max(k.digits, c.Digits)
+		k.whole = k.whole && exp >= 0
+	case clock:
+		f.storeClock(k, c, n)
+	case blank:
+		k.lose(n, blank, "blank", line)
+	case marker:
+		k.lose(n, marker, c.why, line)
+	case prose:
+		if k.text == 0 {
+			k.text = line
+		}
+		k.lose(n, prose, "not a number", line)
+	}
+}
+
+// noteBare counts a number without a unit in a column where others have one.
+func (k *column) noteBare(line int) {
+	if k.bare++; k.bareAt == 0 {
+		k.bareAt = line
+	}
+}
+
+// storeClock stores a clock reading as seconds from the first date's midnight.
+func (f *file) storeClock(k *column, c *cell, n int) {
+	st := c.stamp
+	v := st.s
+	if st.hasDate {
+		day := st.day(f.monthFirst)
+		if f.day0 == 0 {
+			f.day0 = day
+		}
+		v += float64(day-f.day0) * 86400
+		k.dates++
+	}
+	if st.hasTime {
+		k.times++
+		if k.q == 0 || st.q < k.q {
+			k.q = st.q
+		}
+	}
+	k.v[n] = v
+}
+
+// scaled multiplies by a power of ten so that 514.1 mV is the float64 nearest
+// 0.5141 more often than a product with 1e-3 would be: by dividing.
+func scaled(v, factor float64) float64 {
+	if factor < 1 {
+		return v / math.Round(1/factor)
+	}
+	return v * factor
+}
+
+func pick(a, b string) string {
+	if a != "" {
+		return a
+	}
+	return b
+}
+
+// lose notes that row n has no value.
+func (k *column) lose(n int, kd kind, why string, line int) {
+	if i := len(k.lost) - 1; i >= 0 && k.lost[i].to == n && k.lost[i].kind == kd && k.lost[i].why == why {
+		k.lost[i].to++
+		return
+	}
+	if len(k.lost) < maxLost {
+		k.lost = append(k.lost, lost{n, n + 1, kd, why, line})
+	} else {
+		k.lost[len(k.lost)-1].to = n + 1 // too many to tell apart: one run over all of them
+	}
+}
+
+const maxLost = 1 << 16
+
+// closeBody takes what stands behind the last sample as a footer, and a
+// single short last row as cut off.
+func (f *file) closeBody(t *body) {
+	if i := len(t.breaches) - 1; i >= 0 && t.breaches[i].at == t.n {
+		t.footer = t.breaches[i].rows
+		t.breaches = t.breaches[:i]
+	}
+}
+
+// wideRow refuses a row with more cells than the others.
+func (f *file) wideRow(lay *layout, line int, text []byte) error {
+	n := len(split(text, lay.sep, nil))
+	return f.fault(line, recording.ErrAmbiguous, fmt.Sprintf("this row has %d cells, the others have %d", n, lay.width),
+		"mend or remove the row, or say how the file is written: [takes.NAME.csv] separator, decimal")
+}

@@ -1,0 +1,356 @@
+package scopecsv
+
+import (
+	"bytes"
+	"fmt"
+	"strings"
+
+	"benchslip/capture/recording"
+)
+
+// heads are the headers of the columns of samples.
+type heads struct {
+	col   []header
+	named bool // a header row was found
+	rows  int  // how many of the last rows before the samples belong to it
+	line  int  // the header row's line
+	pre   []int
+}
+
+// comment marks that may stand before a header.
+const commentMarks = "#%!*;/"
+
+// findHeads reads the names and units over the samples from the rows right
+// before them. columns tells which columns hold numbers.
+func (f *file) findHeads(lay *layout, numeric []bool) (*heads, error) {
+	h := &heads{col: make([]header, lay.width)}
+	i := len(lay.pre) - 1
+	var units []string
+	unitsLine := -1
+	marker := false
+	for ; i >= 0; i-- {
+		cells := f.cellsOf(lay, lay.pre[i], numeric)
+		if cells == nil { // one cell of prose over several columns: a marker such as "data"
+			if marker || h.named || hasUnit(words(lay.pre[i].text)) {
+				break
+			}
+			marker = true
+			continue
+		}
+		if units == nil && isUnits(cells) {
+			units, unitsLine = cells, i
+			h.pre = append(h.pre, i)
+			if h.named {
+				break
+			}
+			continue
+		}
+		if h.named {
+			break
+		}
+		if !f.isNames(lay, cells, numeric, units != nil, marker) {
+			break
+		}
+		h.named, h.line = true, lay.pre[i].line
+		h.pre = append(h.pre, i)
+		for c := range h.col {
+			if c < len(cells) {
+				h.col[c] = readHeader(cells[c])
+			}
+		}
+		if units != nil {
+			break
+		}
+	}
+	if !h.named && units == nil && len(lay.pre) > 0 {
+		// A row that looks like a header but cannot be laid over the columns
+		// may hold a unit that matters.
+		last := lay.pre[len(lay.pre)-1]
+		if err := f.misfit(lay, last, numeric); err != nil {
+			return nil, err
+		}
+	}
+	for c := range h.col {
+		if c < len(units) && units[c] != "" {
+			unit, q, fac, _ := unitsCell(units[c])
+			h.col[c].unit, h.col[c].q, h.col[c].f, h.col[c].from = unit, q, fac, fmt.Sprintf("the units row, line %d", lay.pre[unitsLine].line)
+		}
+	}
+	return h, nil
+}
+
+// cellsOf lays a row over the columns: by position when it is as wide as the
+// samples, else name by column of numbers when the counts agree. nil when it
+// is neither.
+func (f *file) cellsOf(lay *layout, r row, numeric []bool) []string {
+	text := bytes.TrimLeft(r.text, " \t")
+	if t := bytes.TrimLeft(text, commentMarks); len(t) < len(text) {
+		text = bytes.TrimLeft(t, " ")
+		if lay.sep != '\t' {
+			text = bytes.TrimLeft(text, " \t")
+		}
+	} else {
+		text = r.text
+	}
+	last, count := 0, 0
+	for c, is := range numeric {
+		if is {
+			last = c
+			count++
+		}
+	}
+	fit := func(parts []string) []string {
+		for len(parts) > 0 && parts[len(parts)-1] == "" {
+			parts = parts[:len(parts)-1]
+		}
+		filled := 0
+		for _, p := range parts {
+			if p != "" {
+				filled++
+			}
+		}
+		if filled == 0 {
+			return nil
+		}
+		if len(parts) >= last+1 && len(parts) <= maxWidth {
+			ok := true
+			for c, is := range numeric {
+				if is && parts[c] == "" && filled == count {
+					ok = false // as many names as columns, yet beside them
+				}
+			}
+			if ok {
+				return parts
+			}
+		}
+		if filled == count {
+			out := make([]string, lay.width)
+			k := 0
+			for _, p := range parts {
+				if p == "" {
+					continue
+				}
+				for !numeric[k] {
+					k++
+				}
+				out[k] = p
+				k++
+			}
+			return out
+		}
+		return nil
+	}
+	var parts []string
+	for _, c := range split(text, lay.sep, nil) {
+		parts = append(parts, words(trimmed(c)))
+	}
+	if lay.sep != ' ' {
+		if got := fit(parts); got != nil && (len(parts) > 1 || count == 1) {
+			return got
+		}
+		return nil
+	}
+	// Blanks part names and stand inside them: tabs and wide gaps part best,
+	// then single blanks with units joined to their names.
+	for _, cut := range []func(string) []string{
+		func(s string) []string { return fieldsOn(s, "\t") },
+		func(s string) []string { return fieldsOn(s, "  ") },
+		func(s string) []string { return fieldsOn(s, ",") },
+		joinUnits,
+		strings.Fields,
+	} {
+		if p := cut(string(bytes.TrimSpace(text))); len(p) == count || len(p) >= last+1 && len(p) <= lay.width {
+			for i := range p {
+				p[i] = words(trimmed([]byte(p[i])))
+			}
+			if got := fit(p); got != nil {
+				return got
+			}
+		}
+	}
+	return nil
+}
+
+func fieldsOn(s, sep string) []string {
+	var out []string
+	for _, p := range strings.Split(s, sep) {
+		if p = strings.TrimSpace(p); p != "" {
+			out = append(out, p)
+		}
+	}
+	return out
+}
+
+// joinUnits splits at blanks and puts "(V)" back behind its name.
+func joinUnits(s string) []string {
+	var out []string
+	for _, p := range strings.Fields(s) {
+		if len(out) > 0 && (p[0] == '(' || p[0] == '[') {
+			out[len(out)-1] += " " + p
+		} else {
+			out = append(out, p)
+		}
+	}
+	return out
+}
+
+func isUnits(cells []string) bool {
+	n := 0
+	for _, c := range cells {
+		if c == "" {
+			continue
+		}
+		if _, _, _, ok := unitsCell(c); !ok {
+			return false
+		}
+		n++
+	}
+	return n > 0
+}
+
+// isNames says whether a row can be the names over the samples.
+func (f *file) isNames(lay *layout, cells []string, numeric []bool, units, marker bool) bool {
+	first, filled := true, 0
+	known := false
+	for c, t := range cells {
+		if t == "" {
+			continue
+		}
+		filled++
+		cl := lay.read([]byte(t))
+		switch cl.kind {
+		case number, clock:
+			// Channels may be called 1, 2, 4; the first name is a word.
+			if first || cl.V != float64(int(cl.V)) || cl.V < 0 || cl.V > 999 || strings.ContainsAny(t, ".,eE+-:/") {
+				return false
+			}
+		}
+		if c < len(numeric) && numeric[c] {
+			hd := readHeader(t)
+			known = known || hd.q != unknown || timeWord(t)
+		}
+		first = false
+	}
+	if filled == 0 || marker && !known {
+		return false
+	}
+	if units {
+		return true
+	}
+	// "Vertical Units,V" before two columns is a setting, not a header; and so
+	// is a setting whose name is known.
+	if filled == 2 && !first {
+		a, b := "", ""
+		for _, t := range cells {
+			if t != "" && a == "" {
+				a = t
+			} else if t != "" {
+				b = t
+			}
+		}
+		if _, _, _, ok := unitsCell(b); ok && !timeWord(a) {
+			if _, _, _, ok := unitsCell(a); !ok {
+				return false
+			}
+		}
+		if settingWord(a) {
+			return false
+		}
+	}
+	if filled == 1 {
+		t := cells[0]
+		for _, c := range cells {
+			if c != "" {
+				t = c
+			}
+		}
+		if strings.ContainsAny(t, ":=") || settingWord(t) || len(t) > 60 {
+			return false
+		}
+	}
+	return true
+}
+
+// hasUnit says whether text names a unit in brackets or the word time.
+func hasUnit(t string) bool {
+	for _, w := range strings.FieldsFunc(t, func(r rune) bool { return strings.ContainsRune(" \t,;|", r) }) {
+		if _, in, ok := bracketed(w); ok {
+			if q, _ := unitOf(in); q == volts || q == seconds {
+				return true
+			}
+		}
+	}
+	return false
+}
+
+// misfit refuses a last row before the samples that looks like a header of
+// another width.
+func (f *file) misfit(lay *layout, r row, numeric []bool) error {
+	if f.cellsOf(lay, r, numeric) != nil {
+		return nil
+	}
+	t := words(r.text)
+	cells := split(r.text, lay.sep, nil)
+	filled, text := 0, 0
+	for _, c := range cells {
+		switch lay.read(c).kind {
+		case blank:
+		case prose:
+			text++
+			filled++
+		default:
+			filled++
+		}
+	}
+	count := 0
+	for _, is := range numeric {
+		if is {
+			count++
+		}
+	}
+	key, value := keyValue(r.text, lay.sep)
+	setting := settingWord(key) || filled == 2 && value != "" && lay.read([]byte(value)).kind == number
+	timed := len(cells) > 0 && timeWord(words(trimmed(bytes.TrimLeft(cells[0], commentMarks))))
+	if setting && !timed || filled == 0 || text < filled {
+		return nil
+	}
+	if hasUnit(t) || timed || filled > 1 && filled == text && lay.sep == ',' && count > filled && count%filled == 0 {
+		return f.fault(r.line, recording.ErrAmbiguous,
+			fmt.Sprintf("the header %q has %d names, the rows below have %d columns of numbers", short(t), filled, count),
+			`say how the file is written: [takes.NAME.csv] separator, decimal or skip`)
+	}
+	return nil
+}
+
+// timeWords are names of a time column in the languages met, in lower case.
+var timeWords = map[string]bool{"time": true, "t": true, "times": true, "zeit": true, "temps": true, "tiempo": true, "tempo": true, "tid": true, "tijd": true, "aika": true, "czas": true, "\u0432\u0440\u0435\u043c\u044f": true,
+	"\u65f6\u95f4": true, "\u6642\u9593": true, "\u6642\u523b": true, "\uc2dc\uac04": true, "zeitachse": true, "timestamp": true, "time stamp": true, "timebase": true, "elapsed": true, "elapsed time": true, "seconds": true, "second": true, "sec": true, "secs": true, "rel time": true, "relative time": true, "reltime": true, "abs time": true, "date time": true, "datetime": true, "date/time": true, "date": true, "clock": true, "s": true, "ms": true, "us": true, "ns": true, "milliseconds": true, "microseconds": true, "millis": true, "micros": true, "cas": true, "\u010das": true, "zaman": true, "vrijeme": true, "sample time": true, "horizontal": true, "in s": true, "uhrzeit": true, "heure": true, "hora": true, "ora": true}
+
+// timeWord says whether a header names time.
+func timeWord(t string) bool {
+	h := readHeader(t)
+	w := strings.ToLower(strings.Trim(h.name, " \t\"'#%.:"))
+	if timeWords[w] {
+		return true
+	}
+	for _, p := range []string{"time", "zeit", "temps", "tiempo", "tempo"} {
+		if strings.HasPrefix(w, p) && len(w) > len(p) && !(w[len(p)] >= 'a' && w[len(p)] <= 'z') || strings.HasSuffix(w, " "+p) || strings.HasSuffix(w, "_"+p) {
+			return true
+		}
+	}
+	return h.q == seconds
+}
+
+// indexWords are names of a column that counts rows, in lower case.
+var indexWords = map[string]bool{"x": true, "index": true, "idx": true, "i": true, "n": true, "no": true, "no.": true, "nr": true, "nr.": true, "#": true, "sample": true, "samples": true, "sample no": true, "sample no.": true, "sample number": true, "sample #": true, "sample index": true, "point": true, "points": true, "number": true, "num": true, "row": true, "rows": true, "sequence": true, "seq": true, "record": true, "record no": true, "record no.": true, "scan": true, "scan no": true, "reading": true, "reading no": true, "counter": true, "id": true, "item": true, "\u5e8f\u53f7": true, "s/n": true, "entry": true, "pos": true, "position": true, "line": true, "sample_index": true, "sample_no": true, "pts": true, "data point": true, "": false}
+
+func indexWord(t string) bool {
+	w := strings.ToLower(strings.Trim(t, " \t\"'"))
+	if indexWords[w] {
+		return true
+	}
+	if name, _, ok := bracketed(w); ok {
+		return indexWords[strings.TrimSpace(name)]
+	}
+	return false
+}

@@ -1,0 +1,248 @@
+package scopecsv
+
+import (
+	"fmt"
+	"math"
+	"sort"
+	"strconv"
+)
+
+// timing is what the time column says about the sampling.
+type timing struct {
+	step     float64 // s a sample, least-squares slope of time on row over the whole record, breaks left out
+	bound    float64 // bound of its error from the rounding of the stamps, s
+	median   float64 // median step, s
+	q        float64 // worth of the last digit of the coarsest stamp, s
+	reversed bool
+	breaks   []int // rows that follow a gap or restart
+	repeats  int   // steps of zero
+	repeatAt int
+	worst    float64 // largest distance of a stamp from the line, s
+	rms      float64
+	worstAt  int
+	even     bool // all stamps lie on the line within their rounding
+	usable   bool // near enough to the line that the slope is a sample rate
+}
+
+func pow10(e int) float64 {
+	if e < -300 {
+		return 0
+	}
+	return math.Pow10(min(e, 300))
+}
+
+// rounding returns the worth of the last digit of each stamp's printed form:
+// a number of up to `digits` significant digits, none finer than 10^last.
+func rounding(last, digits int) func(t float64) float64 {
+	finest := pow10(last)
+	return func(t float64) float64 {
+		a := math.Abs(t)
+		if a == 0 {
+			return finest
+		}
+		e := int(math.Floor(math.Log10(a)))
+		return math.Max(finest, pow10(e-digits+1))
+	}
+}
+
+// measureTime fits the stamps t (ascending where they can be; NaN where a
+// stamp is missing). unit is the rounding of a stamp.
+func measureTime(t []float64, unit func(float64) float64) timing {
+	var m timing
+	n := len(t)
+	if n < 2 {
+		return m
+	}
+	lo, hi := math.Inf(1), math.Inf(-1)
+	for _, v := range t {
+		lo, hi = math.Min(lo, v), math.Max(hi, v)
+	}
+	m.q = math.Max(unit(lo), unit(hi))
+	single := isSingle(t, m.q)
+	if single {
+		m.q = math.Max(m.q, 1.2e-7*math.Max(math.Abs(lo), math.Abs(hi)))
+	}
+	// double rounding of the stamps themselves
+	m.q = math.Max(m.q, 4.5e-16*math.Max(math.Abs(lo), math.Abs(hi)))
+
+	steps := make([]float64, 0, n-1)
+	for i := 1; i < n; i++ {
+		if d := t[i] - t[i-1]; d == d {
+			steps = append(steps, d)
+		}
+	}
+	if len(steps) == 0 {
+		return m
+	}
+	sorted := append([]float64(nil), steps...)
+	sort.Float64s(sorted)
+	m.median = (sorted[(len(sorted)-1)/2] + sorted[len(sorted)/2]) / 2
+
+	// A first step from the steps that are no gaps: their mean is right where
+	// the median is spoiled by rounding.
+	sum, k := 0.0, 0
+	for _, d := range sorted {
+		if d >= -m.q && d <= 1.5*math.Max(m.median, 0)+1.01*m.q {
+			sum += d
+			k++
+		}
+	}
+	if k == 0 || sum <= 0 {
+		return m
+	}
+	step := sum / float64(k)
+	for range 2 {
+		m.breaks = m.breaks[:0]
+		m.repeats, m.repeatAt = 0, 0
+		for i := 1; i < n; i++ {
+			d := t[i] - t[i-1]
+			switch {
+			case d > 1.5*step+1.01*m.q, d < -1.01*m.q:
+				m.breaks = append(m.breaks, i)
+			case d == 0:
+				if m.repeats++; m.repeatAt == 0 {
+					m.repeatAt = i
+				}
+			}
+		}
+		step = m.fit(t)
+		if !(step > 0) {
+			return m
+		}
+	}
+	m.step = step
+	m.residuals(t, unit, single)
+	return m
+}
+
+// fit is the common slope of time on row of all stretches between breaks, by
+// least squares, each stretch with its own start.
+func (m *timing) fit(t []float64) float64 {
+	var sxx, sxy float64
+	longest := 1
+	from := 0
+	for b := 0; b <= len(m.breaks); b++ {
+		to := len(t)
+		if b < len(m.breaks) {
+			to = m.breaks[b]
+		}
+		var cx, cy, k float64
+		for i := from; i < to; i++ {
+			if d := t[i] - t[from]; d == d {
+				k++
+				cx += float64(i - from)
+				cy += d
+			}
+		}
+		if k > 1 {
+			cx, cy = cx/k, cy/k
+			for i := from; i < to; i++ {
+				if d := t[i] - t[from]; d == d {
+					x := float64(i-from) - cx
+					sxx += x * x
+					sxy += x * (d - cy)
+				}
+			}
+		}
+		longest = max(longest, to-from)
+		from = to
+	}
+	m.bound = m.q / float64(max(1, longest-1))
+	if sxx == 0 {
+		return 0
+	}
+	return sxy / sxx
+}
+
+// residuals compares each stamp with its stretch's line. A stamp is even when
+// it lies within its rounding (a full unit: some exporters cut digits instead
+// of rounding them) plus 1e-4 of a step.
+func (m *timing) residuals(t []float64, unit func(float64) float64, single bool) {
+	m.even, m.usable = true, true
+	sum, count := 0.0, 0
+	from := 0
+	for b := 0; b <= len(m.breaks); b++ {
+		to := len(t)
+		if b < len(m.breaks) {
+			to = m.breaks[b]
+		}
+		var mean, k float64
+		for i := from; i < to; i++ {
+			if r := t[i] - t[from] - float64(i-from)*m.step; r == r {
+				mean += r
+				k++
+			}
+		}
+		if k > 0 {
+			mean /= k
+		}
+		for i := from; i < to; i++ {
+			r := math.Abs(t[i] - t[from] - float64(i-from)*m.step - mean)
+			if r != r {
+				continue
+			}
+			sum += r * r
+			count++
+			if r > m.worst {
+				m.worst, m.worstAt = r, i
+			}
+			tol := 0.75 * unit(t[i])
+			if single {
+				tol = math.Max(tol, 1e-7*math.Abs(t[i]))
+			}
+			if r > tol+1e-4*m.step+4.5e-16*math.Abs(t[i]) {
+				m.even = false
+			}
+			if r > 0.5*m.step+unit(t[i]) {
+				m.usable = false
+			}
+		}
+		from = to
+	}
+	m.rms = math.Sqrt(sum / float64(max(1, count)))
+	if len(m.breaks) > max(2, len(t)/20) {
+		m.usable, m.even = false, false
+	}
+}
+
+// isSingle says whether stamps printed with more than seven digits are the
+// values of a 32-bit float: each agrees with its own rounding to one.
+func isSingle(t []float64, q float64) bool {
+	fine := false
+	for _, v := range t {
+		if v != v {
+			continue
+		}
+		d := math.Abs(float64(float32(v)) - v)
+		if d > 0.51*q && d > 1e-12*math.Abs(v) {
+			return false
+		}
+		fine = fine || q < 2e-8*math.Abs(v)
+	}
+	return fine
+}
+
+// rounded returns the shortest decimal within slack of v, in relative terms.
+func rounded(v, slack float64) float64 {
+	for d := 1; d <= 15; d++ {
+		r, _ := strconv.ParseFloat(strconv.FormatFloat(v, 'e', d-1, 64), 64)
+		if math.Abs(r-v) <= slack*math.Abs(v) {
+			return r
+		}
+	}
+	return v
+}
+
+// roundRate returns the rate for a step known within slack (relative): as the
+// rounder of rate and step.
+func roundRate(step, slack float64) float64 {
+	slack = math.Max(slack, 1e-13)
+	rate := rounded(1/step, slack)
+	s := rounded(step, slack)
+	if len(strconv.FormatFloat(s, 'e', -1, 64)) < len(strconv.FormatFloat(rate, 'e', -1, 64)) {
+		return 1 / s
+	}
+	return rate
+}
+
+func seconds3(v float64) string { return fmt.Sprintf("%.6g s", v) }
