@@ -42,6 +42,9 @@ type Result struct {
 	// stated: flag uncertainty-unstated, at best conditional-pass.
 	Lacking []string
 
+	// Conditional says why the row is at best conditional-pass; "" for no reason.
+	Conditional string
+
 	// FullScaleSine is the RMS in V of a sine that just reaches digital full
 	// scale, for limits in dBFS; 0 where there is none.
 	FullScaleSine float64
