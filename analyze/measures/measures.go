@@ -3,7 +3,10 @@ package measures
 
 import (
 	"benchslip/analyze"
+	"benchslip/analyze/commonmode"
+	"benchslip/analyze/hum"
 	"benchslip/analyze/level"
+	"benchslip/analyze/noise"
 	"benchslip/analyze/tone"
 )
 
@@ -13,6 +16,9 @@ func All() []*analyze.Measure {
 	for _, list := range [][]*analyze.Measure{
 		level.Measures(),
 		tone.Measures(),
+		noise.Measures(),
+		hum.Measures(),
+		commonmode.Measures(),
 	} {
 		all = append(all, list...)
 	}

@@ -10,6 +10,9 @@ import (
 	"benchslip/analyze/internal/spectrum"
 )
 
+// topHarmonic is the highest harmonic of the tone that is followed with it.
+const topHarmonic = 20
+
 // maxOthers is how many lines beside tone and mains are followed.
 const maxOthers = 24
 
@@ -23,6 +26,7 @@ func (b Block) Middle() float64 { return float64(b.From+b.To-1) / 2 }
 type followed struct {
 	Blocks  []Block
 	Tone    []sinefit.Estimate // nil without a tone peak
+	Orders  int                // highest order of the tone seen in the survey
 	MainsHz float64            // coarse; 0: not resolvable
 	Comb    comb
 	Mains   *sinefit.Track   // nil when no order stands out or none is resolvable
@@ -52,12 +56,13 @@ func newFollowed(p *analyze.Pass, s *analyze.Signal, toneHz float64, weak bool) 
 	if toneHz > 0 && !weak {
 		c := sinefit.Comb{Nu: toneHz / rate, Orders: []float64{1}, Free: true}
 		few := toneHz*s.DurationS() < 10
-		for h := 2; h <= 20 && float64(h)*toneHz < 0.49*rate; h++ {
+		for h := 2; h <= topHarmonic && float64(h)*toneHz < 0.49*rate; h++ {
 			hz := float64(h) * toneHz
 			_, seen := v.StrongestIn(hz-v.ToleranceHz()*2, hz+v.ToleranceHz()*2, nil)
 			if seen || (few && h <= 10) {
 				c.Orders = append(c.Orders, float64(h))
 				all = append(all, hz)
+				f.Orders = h
 			}
 		}
 		toneAt = len(combs)
@@ -159,7 +164,7 @@ func isHarmonic(hz, toneHz, tol float64) bool {
 		return false
 	}
 	h := math.Round(hz / toneHz)
-	return h >= 1 && math.Abs(hz-h*toneHz) < tol+1e-4*hz
+	return h >= 1 && h <= topHarmonic && math.Abs(hz-h*toneHz) < tol+1e-4*hz
 }
 
 // blocksFor divides n samples into equal blocks of at least 1 s, ten periods

@@ -133,8 +133,8 @@ func (l *Lines) layout(f *followed, tone *sinefit.Track, o Options) {
 		return hz < clear || hz > rate/2-clear/2
 	}
 	if tone != nil {
-		top := o.Orders
-		if 5 > l.Tone.Periods { // few periods: ten harmonics at most
+		top := max(o.Orders, f.Orders)
+		if l.Tone.Periods < 5 { // few periods: ten harmonics at most
 			top = min(top, 10)
 		}
 		for h := 1; h <= top; h++ {

@@ -276,3 +276,15 @@ func fewPeriods(s *analyze.Signal, lo, hi float64) (hz float64, ok bool) {
 	}
 	return hz, power > 0 && best < power/2
 }
+
+// ToneAt is a tone of known frequency that need not be visible: for reading
+// what a take holds at the frequency of another.
+func ToneAt(s *analyze.Signal, hz float64, like *Tone) *Tone {
+	t := *like
+	t.Track = &sinefit.Track{Len: s.Len(), Nu: hz / s.RateHz, Rigid: true}
+	t.Hz, t.Coarse = hz, hz
+	t.Periods = hz * s.DurationS()
+	t.Few = t.Periods < 5
+	t.id = fmt.Sprintf("at/%.12g/%s", hz, s.ID())
+	return &t
+}

@@ -60,7 +60,7 @@ func add(set []stage.Line) sum {
 // detected: the reading of one line among n passes for noise in fewer than
 // one in a thousand cases.
 func detected(q stage.Line, n int) bool {
-	return q.Power+q.Share > q.Share*math.Log(float64(n)/falseAlarm) && q.Power+q.Share > 0
+	return q.Power+q.Share > q.Share*math.Log(float64(n)/stage.FalseAlarm) && q.Power+q.Share > 0
 }
 
 func runTHD(p *analyze.Pass) analyze.Result {
@@ -69,21 +69,21 @@ func runTHD(p *analyze.Pass) analyze.Result {
 		top = 10
 	}
 	band := p.Params.BandOr(20, 20000)
-	h, bad := listen(p, "take", top)
+	h, bad := stage.Listen(p, "take", top)
 	if bad == nil {
-		bad = h.tone.FullPeriods(h.out)
+		bad = h.Tone.FullPeriods(h.Out)
 	}
 	if bad != nil {
 		return analyze.RefuseWith(percent, bad)
 	}
-	set := inBand(h.lo, top, band.High)
+	set := inBand(h.Lo, top, band.High)
 	if len(set) == 0 {
 		return analyze.Refuse(percent, analyze.Bandwidth,
-			fmt.Sprintf("no harmonic of %.6g Hz lies below %.6g Hz and half the sample rate", h.tone.Hz, band.High),
+			fmt.Sprintf("no harmonic of %.6g Hz lies below %.6g Hz and half the sample rate", h.Tone.Hz, band.High),
 			"use a lower tone, a wider band or a higher sample rate")
 	}
 	s := add(set)
-	p1 := h.lo.Fundamental().Power
+	p1 := h.Lo.Fundamental().Power
 	ref := p1
 	if p.Params.Reference == "total" {
 		ref = p1 + math.Max(s.P, 0)
@@ -93,12 +93,12 @@ func runTHD(p *analyze.Pass) analyze.Result {
 	if s.P > 0 {
 		v := math.Sqrt(s.P / ref)
 		b.A("noise at the harmonics", s.U/(2*math.Sqrt(s.P*ref)), 0)
-		b.B("converter steps", stage.StepU(h.lo)/math.Sqrt2/math.Sqrt(ref))
-		b.A("noise at the fundamental", v*noiseU(h.lo), 0)
+		b.B("converter steps", stage.StepU(h.Lo)/math.Sqrt2/math.Sqrt(ref))
+		b.A("noise at the fundamental", v*stage.NoiseU(h.Lo), 0)
 		r.Value = &v
 	}
 	finish(&r, &b, p, h)
-	r.Details["harmonics"] = harmonicList(h.lo, top, band.High)
+	r.Details["harmonics"] = harmonicList(h.Lo, top, band.High)
 	r.Details["band_hz"] = []float64{band.Low, band.High}
 	r.Details["reference"] = p.Params.Reference
 	if p.Params.Reference == "" {
@@ -108,19 +108,19 @@ func runTHD(p *analyze.Pass) analyze.Result {
 		r.Value, r.Budget = nil, nil
 		bound, ok := budget.UpperBoundOf(s.read, s.shares, 0.95)
 		if !ok {
-			bound = budget.SumThreshold(s.shares, falseAlarm)
+			bound = budget.SumThreshold(s.shares, stage.FalseAlarm)
 		}
-		bound += stage.StepU(h.lo)
+		bound += stage.StepU(h.Lo)
 		setBound(&r, bound/math.Sqrt(ref), analyze.BelowDetection,
-			fmt.Sprintf("no harmonic of %.6g Hz stands out of the noise", h.tone.Hz), longerTake(h))
+			fmt.Sprintf("no harmonic of %.6g Hz stands out of the noise", h.Tone.Hz), longerTake(h))
 	}
-	if _, all, few := stage.FewCodes(h.lo); few && s.P < all*all/2 {
+	if _, all, few := stage.FewCodes(h.Lo); few && s.P < all*all/2 {
 		r.Value, r.Budget = nil, nil
 		setBound(&r, math.Max(all/math.Sqrt2/math.Sqrt(ref), boundOf(r)), analyze.FloorLimited,
-			fmt.Sprintf("the tone uses %.0f converter steps to its peak, whose own harmonics reach this far", cmplx.Abs(h.lo.Phasor())/h.out.Step),
+			fmt.Sprintf("the tone uses %.0f converter steps to its peak, whose own harmonics reach this far", cmplx.Abs(h.Lo.Phasor())/h.Out.Step),
 			"use a converter with more bits, or more of its range")
 	}
-	return stage.LoopHarmonics(p, h.lo, set, r, math.Sqrt(ref))
+	return stage.LoopHarmonics(p, h.Lo, set, r, math.Sqrt(ref))
 }
 
 func boundOf(r analyze.Result) float64 {
@@ -136,8 +136,8 @@ func setBound(r *analyze.Result, v float64, code, text, advice string) {
 	r.Details["upper_bound"] = r.Unit.FromLinear(v)
 }
 
-func longerTake(h *heard) string {
-	return fmt.Sprintf("record longer: %.3g s halve the bound", 4*h.out.DurationS())
+func longerTake(h *stage.Heard) string {
+	return fmt.Sprintf("record longer: %.3g s halve the bound", 4*h.Out.DurationS())
 }
 
 // harmonicList is details.harmonics, the fundamental first.
@@ -186,48 +186,48 @@ func runHarmonic(p *analyze.Pass) analyze.Result {
 	if order == 0 {
 		order = 2
 	}
-	h, bad := listen(p, "take", order)
+	h, bad := stage.Listen(p, "take", order)
 	if bad != nil {
 		return analyze.RefuseWith(dB, bad)
 	}
 	var q *stage.Line
-	for i := range h.lo.Harm {
-		if h.lo.Harm[i].Order == order {
-			q = &h.lo.Harm[i]
+	for i := range h.Lo.Harm {
+		if h.Lo.Harm[i].Order == order {
+			q = &h.Lo.Harm[i]
 		}
 	}
 	if q == nil {
 		return analyze.Refuse(dB, analyze.Bandwidth,
-			fmt.Sprintf("harmonic %d of %.6g Hz lies above half the sample rate, or on another line", order, h.tone.Hz),
+			fmt.Sprintf("harmonic %d of %.6g Hz lies above half the sample rate, or on another line", order, h.Tone.Hz),
 			"record at a higher rate, or use a lower tone")
 	}
-	u1 := math.Sqrt(h.lo.Fundamental().Power)
+	u1 := math.Sqrt(h.Lo.Fundamental().Power)
 	r := analyze.Result{Unit: dB}
 	var b budget.Budget
 	if q.Power > 0 {
 		v := math.Sqrt(q.Power) / u1
 		b.A("noise at the harmonic", rmsU(*q)/u1, 0)
-		b.B("converter steps", stage.StepU(h.lo)/math.Sqrt2/u1)
-		b.A("noise at the fundamental", v*noiseU(h.lo), 0)
+		b.B("converter steps", stage.StepU(h.Lo)/math.Sqrt2/u1)
+		b.A("noise at the fundamental", v*stage.NoiseU(h.Lo), 0)
 		r.Value = &v
 	}
 	finish(&r, &b, p, h)
-	r.Details["harmonics"] = harmonicList(h.lo, order, h.out.RateHz/2)
+	r.Details["harmonics"] = harmonicList(h.Lo, order, h.Out.RateHz/2)
 	if !detected(*q, 1) {
 		r.Value, r.Budget = nil, nil
 		bound, ok := budget.UpperBound(q.Power+q.Share, q.Share, 1, 0.95)
 		if !ok {
-			bound = budget.ShareThreshold(q.Share, falseAlarm)
+			bound = budget.ShareThreshold(q.Share, stage.FalseAlarm)
 		}
-		setBound(&r, (bound+stage.StepU(h.lo))/u1, analyze.BelowDetection,
+		setBound(&r, (bound+stage.StepU(h.Lo))/u1, analyze.BelowDetection,
 			fmt.Sprintf("harmonic %d does not stand out of the noise", order), longerTake(h))
 	}
-	if one, _, few := stage.FewCodes(h.lo); few && q.Power < one*one/2 {
+	if one, _, few := stage.FewCodes(h.Lo); few && q.Power < one*one/2 {
 		r.Value, r.Budget = nil, nil
 		setBound(&r, math.Max(one/math.Sqrt2/u1, boundOf(r)), analyze.FloorLimited,
 			"the converter's own steps make harmonics this large", "use a converter with more bits, or more of its range")
 	}
-	return stage.LoopHarmonics(p, h.lo, []stage.Line{*q}, r, u1)
+	return stage.LoopHarmonics(p, h.Lo, []stage.Line{*q}, r, u1)
 }
 
 var thdn = &analyze.Measure{
@@ -261,23 +261,23 @@ func runResidual(p *analyze.Pass, inverse bool) analyze.Result {
 	if inverse {
 		u = dB
 	}
-	h, bad := listen(p, "take", 0)
+	h, bad := stage.Listen(p, "take", 0)
 	if bad == nil {
-		bad = h.tone.FullPeriods(h.out)
+		bad = h.Tone.FullPeriods(h.Out)
 	}
 	var band stage.Band
 	if bad == nil {
-		band, bad = stage.BandFor(h.out, p.Params.BandOr(20, 20000))
+		band, bad = stage.BandFor(h.Out, p.Params.BandOr(20, 20000))
 	}
 	if bad != nil {
 		return analyze.RefuseWith(u, bad)
 	}
-	f := h.lo.Fundamental()
+	f := h.Lo.Fundamental()
 	if !band.InLine(f.Hz) {
 		return analyze.Refuse(u, analyze.Bandwidth,
 			fmt.Sprintf("the tone at %.6g Hz lies outside the band %.6g Hz .. %.6g Hz", f.Hz, band.Low, band.High), "state a band that holds the tone")
 	}
-	rest := stage.Residual(h.lo, band)
+	rest := stage.Residual(h.Lo, band)
 	total := rest.P + f.Power
 	r := analyze.Result{Unit: u}
 	var b budget.Budget
@@ -298,7 +298,7 @@ func runResidual(p *analyze.Pass, inverse bool) analyze.Result {
 	r.Details["method"] = "fitted sine, no notch filter; a notch of Q 1.2 to 3 reads up to 1.2 dB lower when the second harmonic dominates"
 	r.Details["residual_v"] = math.Sqrt(math.Max(rest.P, 0))
 	r.Details["total_v"] = math.Sqrt(total)
-	r.Details["harmonics"] = harmonicList(h.lo, 10, band.High)
+	r.Details["harmonics"] = harmonicList(h.Lo, 10, band.High)
 	if band.Open {
 		r.Details["lower_edge_resolved"] = false
 		r.Notes = append(r.Notes, "the span is too short for the lower band edge: everything but DC up to the upper edge counts")
@@ -310,5 +310,5 @@ func runResidual(p *analyze.Pass, inverse bool) analyze.Result {
 		}
 		return r
 	}
-	return stage.ResidualFloor(p, h.lo, band, rest, f.Power, r, inverse)
+	return stage.ResidualFloor(p, h.Lo, band, rest, f.Power, r, inverse)
 }

@@ -31,122 +31,34 @@ func Measures() []*analyze.Measure {
 	return []*analyze.Measure{gain, phase, polarity, frequency, thd, harmonic, thdn, sinad}
 }
 
-// heard is a take whose tone was found.
-type heard struct {
-	out, in *analyze.Signal // in nil without a second channel
-	tone    *stage.Tone
-	lo, li  *stage.Lines
-}
-
-// listen finds the tone of a role's take: searched in `in` when the take has
-// one and needIn allows it, else in `out`, and followed in both.
-func listen(p *analyze.Pass, role string, orders int) (*heard, *analyze.Refusal) {
-	return listenTo(p, p.Take(role), role, orders)
-}
-
-func listenTo(p *analyze.Pass, t *analyze.Take, role string, orders int) (*heard, *analyze.Refusal) {
-	h := &heard{}
-	var bad *analyze.Refusal
-	if h.out, bad = p.SignalOf(t, role, "out"); bad != nil {
-		return nil, bad
-	}
-	if p.Wiring(t).In != "" {
-		if h.in, bad = p.SignalOf(t, role, "in"); bad != nil {
-			return nil, bad
-		}
-	}
-	at := 0.0
-	if len(p.Params.At) > 0 {
-		at = p.Params.At[0]
-	}
-	search, other := h.out, h.in
-	if h.in != nil {
-		search, other = h.in, h.out
-	}
-	if h.tone, bad = stage.FindTone(p, at, search, other); bad != nil {
-		return nil, bad
-	}
-	h.lo = stage.Decompose(p, h.out, stage.Options{Tone: h.tone, Orders: orders})
-	if bad := present(h.lo); bad != nil {
-		return nil, bad
-	}
-	if h.in != nil {
-		h.li = stage.Decompose(p, h.in, stage.Options{Tone: h.tone})
-		if bad := present(h.li); bad != nil {
-			return nil, bad
-		}
-	}
-	return h, nil
-}
-
-// falseAlarm is the probability that noise passes for a line.
-const falseAlarm = 1e-3
-
-// present refuses a fundamental that does not stand out of the noise.
-func present(l *stage.Lines) *analyze.Refusal {
-	f := l.Fundamental()
-	if f == nil || math.IsInf(l.Cond, 0) {
-		return &analyze.Refusal{Code: analyze.TooShort,
-			Text:   fmt.Sprintf("take %q: the tone cannot be told from its neighbours in %.4g s", l.Sig.Take.Name, l.Sig.DurationS()),
-			Advice: fmt.Sprintf("record %.3g s or more", 4*l.Sig.DurationS())}
-	}
-	read := f.Whole + f.Share
-	if read <= 0 || math.Sqrt(read) < budget.ShareThreshold(f.Dens/l.Sig.DurationS(), falseAlarm) {
-		return &analyze.Refusal{Code: analyze.NoTone,
-			Text:   fmt.Sprintf("take %q, channel %d: no tone at %.6g Hz stands out of the noise", l.Sig.Take.Name, l.Sig.Channel(), f.Hz),
-			Advice: "check the wiring, or raise the level"}
-	}
-	return nil
-}
-
-// noiseU is the relative standard uncertainty of a fundamental's amplitude
-// (and its phase in rad) from noise.
-func noiseU(l *stage.Lines) float64 { return l.PhasorU(l.Fundamental()) / cmplx.Abs(l.Phasor()) }
-
-// stepU is the relative standard uncertainty that converter steps bring when
-// no dither hides them (noise under 0.45 step RMS; triangular dither gives
-// 0.5): errors of lines stay within a quarter of a step, taken as
-// rectangular.
-func stepU(l *stage.Lines) float64 { return stage.StepU(l) / cmplx.Abs(l.Phasor()) }
-
-// addTone adds what the reading of one fundamental contributes to a value
-// proportional to it.
-func addTone(b *budget.Budget, l *stage.Lines, what string, value float64) {
-	b.A("noise in "+what, noiseU(l)*value, 0)
-	b.B("converter steps in "+what, stepU(l)*value)
-	if s := l.ScatterU(); s > 0 {
-		b.A("wander of the level in "+what, s*value, float64(len(l.Blocks)-1))
-	}
-}
-
 // details of the fundamental in out.
-func details(h *heard) map[string]any {
-	f := h.lo.Fundamental()
+func details(h *stage.Heard) map[string]any {
+	f := h.Lo.Fundamental()
 	d := map[string]any{
 		"fundamental": map[string]any{"frequency_hz": f.Hz, "rms_v": f.RMS()},
-		"span_s":      []float64{h.out.StartS, h.out.StartS + h.out.DurationS()},
-		"gap_hz":      h.lo.GapHz,
-		"periods":     h.tone.Periods,
+		"span_s":      []float64{h.Out.StartS, h.Out.StartS + h.Out.DurationS()},
+		"gap_hz":      h.Lo.GapHz,
+		"periods":     h.Tone.Periods,
 	}
-	if !h.tone.MainsResolved {
+	if !h.Tone.MainsResolved {
 		d["mains_resolved"] = false
 	}
 	return d
 }
 
-func finish(r *analyze.Result, b *budget.Budget, p *analyze.Pass, h *heard) {
+func finish(r *analyze.Result, b *budget.Budget, p *analyze.Pass, h *stage.Heard) {
 	b.Into(r)
 	r.Details = details(h)
-	r.FullScaleSine = h.out.FullScaleSine()
-	r.Figures = append(r.Figures, stage.ToneWaveform(h.out, h.tone.Hz), stage.SpectrumFigure(p, h.lo))
-	if !h.tone.MainsResolved {
+	r.FullScaleSine = h.Out.FullScaleSine()
+	r.Figures = append(r.Figures, stage.ToneWaveform(h.Out, h.Tone.Hz), stage.SpectrumFigure(p, h.Lo))
+	if !h.Tone.MainsResolved {
 		r.Notes = append(r.Notes, "the span is too short to tell mains lines from the tone")
 	}
-	if h.tone.OnMains > 0 {
-		r.Notes = append(r.Notes, fmt.Sprintf("the tone lies %.3g Hz from mains order %d; the uncertainty includes their correlation", h.tone.MainsGapHz, h.tone.OnMains))
+	if h.Tone.OnMains > 0 {
+		r.Notes = append(r.Notes, fmt.Sprintf("the tone lies %.3g Hz from mains order %d; the uncertainty includes their correlation", h.Tone.MainsGapHz, h.Tone.OnMains))
 	}
-	if k := toneOnMains(h.lo); k > 0 {
-		r.Flags = append(r.Flags, stage.ToneOnMainsFlag(h.lo, k))
+	if k := toneOnMains(h.Lo); k > 0 {
+		r.Flags = append(r.Flags, stage.ToneOnMainsFlag(h.Lo, k))
 	}
 }
 
@@ -173,93 +85,28 @@ var gain = &analyze.Measure{
 	Run:      runGain,
 }
 
-// source of the input tone.
-type stimulus struct {
-	z     complex128 // peak phasor; phase only with the same take
-	lines *stage.Lines
-	level float64 // stated RMS, V, instead
-}
-
-// input finds what drove the unit.
-func input(p *analyze.Pass, h *heard) (stimulus, *analyze.Refusal) {
-	t := p.Take("take")
-	w := p.Wiring(t)
-	switch {
-	case p.Has("in_take"):
-		other := p.Take("in_take")
-		key := "out"
-		if p.Wiring(other).In != "" {
-			key = "in"
-		}
-		sig, bad := p.SignalOf(other, "in_take", key)
-		if bad != nil {
-			return stimulus{}, bad
-		}
-		tn, bad := stage.FindTone(p, h.tone.Hz, sig)
-		if bad != nil {
-			return stimulus{}, bad
-		}
-		if math.Abs(tn.Hz/h.tone.Hz-1) > 500e-6 {
-			return stimulus{}, &analyze.Refusal{Code: analyze.NoTone,
-				Text:   fmt.Sprintf("take %q holds a tone at %.7g Hz, take %q at %.7g Hz: over 500 ppm apart", t.Name, h.tone.Hz, other.Name, tn.Hz),
-				Advice: "record both takes with the same tone"}
-		}
-		l := stage.Decompose(p, sig, stage.Options{Tone: tn})
-		if bad := present(l); bad != nil {
-			return stimulus{}, bad
-		}
-		return stimulus{z: l.Phasor(), lines: l}, nil
-	case h.in != nil:
-		return stimulus{z: h.li.Phasor(), lines: h.li}, nil
-	case w.InLevel != nil:
-		if h.out.Unit != "V" {
-			return stimulus{}, &analyze.Refusal{Code: analyze.Uncalibrated,
-				Text:   fmt.Sprintf("the input level is stated in volts, take %q has no volts at full scale", t.Name),
-				Advice: "state full_scale_peak for its gear, or record the input on a second channel"}
-		}
-		return stimulus{level: w.InLevel.Linear()}, nil
-	}
-	return stimulus{}, &analyze.Refusal{Code: analyze.MissingTake,
-		Text:   fmt.Sprintf("take %q names no input: neither `in`, `in_take` nor `in_level`", t.Name),
-		Advice: "record the stimulus on a second channel and name it with `in`, or state `in_level`"}
-}
-
 func runGain(p *analyze.Pass) analyze.Result {
-	h, bad := listen(p, "take", 0)
+	h, bad := stage.Listen(p, "take", 0)
 	if bad != nil {
 		return analyze.RefuseWith(dB, bad)
 	}
-	s, bad := input(p, h)
+	s, bad := stage.Input(p, h)
 	if bad != nil {
 		return analyze.RefuseWith(dB, bad)
 	}
-	t := p.Take("take")
-	var b budget.Budget
-	var g float64
-	z := h.lo.Phasor()
-	if s.lines != nil {
-		if (s.lines.Sig.Unit == "V") != (h.out.Unit == "V") {
-			return analyze.Refuse(dB, analyze.Uncalibrated, "one of the two channels has no volts at full scale", "state full_scale_peak for both")
-		}
-		g = cmplx.Abs(z) / cmplx.Abs(s.z)
-		addTone(&b, h.lo, "out", g)
-		addTone(&b, s.lines, "in", g)
-		b.Ratio(h.out, s.lines.Sig, g)
-	} else {
-		g = cmplx.Abs(z) / math.Sqrt2 / s.level
-		addTone(&b, h.lo, "out", g)
-		b.Scale(h.out, g)
-		b.InLevel(t, p.Wiring(t), g)
+	g, bad := stage.GainOfHeard(p, p.Take("take"), h, s)
+	if bad != nil {
+		return analyze.RefuseWith(dB, bad)
 	}
-	r := analyze.Result{Value: &g, Unit: dB}
-	finish(&r, &b, p, h)
+	r := analyze.Result{Value: &g.G, Unit: dB}
+	finish(&r, &g.Budget, p, h)
 	r.FullScaleSine = 0
-	if h.in != nil && s.lines == h.li {
-		r.Details["phase_deg"] = cmplx.Phase(z/s.z) * 180 / math.Pi
-		r.Details["in_rms_v"] = cmplx.Abs(s.z) / math.Sqrt2
+	if h.In != nil && s.Lines == h.Li {
+		r.Details["phase_deg"] = cmplx.Phase(g.Phasor) * 180 / math.Pi
+		r.Details["in_rms_v"] = cmplx.Abs(s.Z) / math.Sqrt2
 	}
-	r.Details["out_rms_v"] = cmplx.Abs(z) / math.Sqrt2
-	return stage.Rails(p, h.lo, r)
+	r.Details["out_rms_v"] = cmplx.Abs(h.Lo.Phasor()) / math.Sqrt2
+	return stage.Rails(p, h.Lo, r)
 }
 
 var phase = &analyze.Measure{
@@ -276,9 +123,9 @@ var phase = &analyze.Measure{
 }
 
 // phased finds the tone in both channels of the take.
-func phased(p *analyze.Pass) (*heard, *analyze.Refusal) {
-	h, bad := listen(p, "take", 0)
-	if bad == nil && h.in == nil {
+func phased(p *analyze.Pass) (*stage.Heard, *analyze.Refusal) {
+	h, bad := stage.Listen(p, "take", 0)
+	if bad == nil && h.In == nil {
 		bad = &analyze.Refusal{Code: analyze.MissingTake,
 			Text:   fmt.Sprintf("take %q names no `in`: phase needs the stimulus on a second channel of the same take", p.Take("take").Name),
 			Advice: "record the stimulus on a second channel and name it with `in`"}
@@ -291,15 +138,15 @@ func runPhase(p *analyze.Pass) analyze.Result {
 	if bad != nil {
 		return analyze.RefuseWith(degree, bad)
 	}
-	deg := cmplx.Phase(h.lo.Phasor()/h.li.Phasor()) * 180 / math.Pi
+	deg := cmplx.Phase(h.Lo.Phasor()/h.Li.Phasor()) * 180 / math.Pi
 	if deg <= -180 {
 		deg = 180
 	}
 	var b budget.Budget
 	perRad := 180 / math.Pi
-	addTone(&b, h.lo, "out", perRad)
-	addTone(&b, h.li, "in", perRad)
-	b.Skew(h.out, h.in, 360*h.tone.Hz)
+	stage.AddTone(&b, h.Lo, "out", perRad)
+	stage.AddTone(&b, h.Li, "in", perRad)
+	b.Skew(h.Out, h.In, 360*h.Tone.Hz)
 	r := analyze.Result{Value: &deg, Unit: degree}
 	finish(&r, &b, p, h)
 	return r
@@ -322,12 +169,12 @@ func runPolarity(p *analyze.Pass) analyze.Result {
 	if bad != nil {
 		return analyze.RefuseWith(count, bad)
 	}
-	ph := cmplx.Phase(h.lo.Phasor() / h.li.Phasor())
+	ph := cmplx.Phase(h.Lo.Phasor() / h.Li.Phasor())
 	c := math.Cos(ph)
 	v := math.Copysign(1, c)
 	if math.Abs(c) <= 0.5 {
 		return analyze.Refuse(count, analyze.NotEnoughPoints,
-			fmt.Sprintf("the output is %.1f deg from the input at %.6g Hz: neither in phase nor inverted", ph*180/math.Pi, h.tone.Hz),
+			fmt.Sprintf("the output is %.1f deg from the input at %.6g Hz: neither in phase nor inverted", ph*180/math.Pi, h.Tone.Hz),
 			"use a lower or middle frequency, or the pulse stimulus")
 	}
 	r := analyze.Result{Value: &v, Unit: count}
@@ -349,22 +196,22 @@ var frequency = &analyze.Measure{
 }
 
 func runFrequency(p *analyze.Pass) analyze.Result {
-	h, bad := listen(p, "take", 0)
+	h, bad := stage.Listen(p, "take", 0)
 	if bad != nil {
 		return analyze.RefuseWith(hertz, bad)
 	}
-	f := h.tone.Hz
+	f := h.Tone.Hz
 	var b budget.Budget
-	b.A("noise", h.tone.UHz, 0)
+	b.A("noise", h.Tone.UHz, 0)
 	// Steps without dither move the phase of a block by StepU; over the span
 	// they act like noise of that size.
-	b.B("converter steps", stepU(h.lo)*math.Sqrt(3)/(math.Pi*h.out.DurationS()))
-	b.Clock(h.out, f)
+	b.B("converter steps", stage.RelativeStepU(h.Lo)*math.Sqrt(3)/(math.Pi*h.Out.DurationS()))
+	b.Clock(h.Out, f)
 	r := analyze.Result{Value: &f, Unit: hertz}
 	finish(&r, &b, p, h)
 	if len(p.Params.At) > 0 {
 		r.Details["ppm"] = (f/p.Params.At[0] - 1) * 1e6
 	}
-	r.Details["wander_hz"] = h.tone.Track.Spread * h.out.RateHz
+	r.Details["wander_hz"] = h.Tone.Track.Spread * h.Out.RateHz
 	return r
 }

@@ -70,6 +70,11 @@ func SumThreshold(shares []float64, p float64) float64 {
 	return math.Sqrt(share * mathext.GammaIncRegCompInv(dof/2, p))
 }
 
+// MeanThreshold is the mean of m equal noise powers, over their expectation,
+// that noise alone exceeds with probability p: chi-square with 2 m degrees of
+// freedom over 2 m. For m = 1 it is ln(1/p).
+func MeanThreshold(m, p float64) float64 { return mathext.GammaIncRegCompInv(m, p) / m }
+
 func effective(shares []float64) (share, dof float64) {
 	top := 0.0
 	for _, n := range shares {
