@@ -1,6 +1,7 @@
 package wav
 
 import (
+	"io"
 	"math"
 	"os"
 	"strings"
@@ -158,5 +159,56 @@ func TestMissingBounded(t *testing.T) {
 	in, _ := readAll(t, riff(chunk("fmt ", pcmFormat(3, 1, 48000, 32)), chunk("data", samples(v...))))
 	if n := len(in.Missing); n != maxRuns || in.Missing[n-1].To != int64(len(v)) {
 		t.Errorf("%d runs, the last %+v", n, in.Missing[n-1])
+	}
+}
+
+// hugeFile is a file of size bytes that is zero but for its head and tail.
+type hugeFile struct {
+	head, tail []byte
+	size       int64
+}
+
+func (h hugeFile) ReadAt(b []byte, at int64) (int, error) {
+	n := int(min(int64(len(b)), h.size-at))
+	clear(b[:n])
+	if at < int64(len(h.head)) {
+		copy(b[:n], h.head[at:])
+	}
+	from := h.size - int64(len(h.tail))
+	for i := max(0, from-at); i < int64(n); i++ {
+		b[i] = h.tail[at+i-from]
+	}
+	if n < len(b) {
+		return n, io.EOF
+	}
+	return n, nil
+}
+
+// Offsets beyond 2, 4 and 2^40 bytes: the last frame is where it should be.
+func TestHuge(t *testing.T) {
+	fm := chunk("fmt ", pcmFormat(1, 2, 96000, 24))
+	for _, frames := range []int64{1<<31/6 + 7, 1<<32/6 - 100, 1<<32/6 + 7, 1 << 40} {
+		data := 6 * frames
+		head := riff(fm, sizedChunk("data", uint32(data), nil))
+		if data > math.MaxUint32-1000 {
+			head = container("RF64", ds64(0, uint64(data)), fm, sizedChunk("data", unknownSize, nil))
+			le.PutUint64(head[20:], uint64(int64(len(head))+data-8))
+			le.PutUint32(head[4:], unknownSize)
+		} else {
+			le.PutUint32(head[4:], uint32(int64(len(head))+data-8))
+		}
+		f := hugeFile{head: head, tail: pack24(1<<22, -1<<21), size: int64(len(head)) + data}
+		r, err := newReader(f, f.size, "huge")
+		if err != nil {
+			t.Fatal(err)
+		}
+		if r.info.Frames != frames || len(r.info.Flags) > 0 {
+			t.Errorf("%d frames, want %d; flags %+v", r.info.Frames, frames, r.info.Flags)
+		}
+		dst := [][]float64{make([]float64, 5), make([]float64, 5)}
+		n, err := r.ReadAt(dst, frames-2)
+		if n != 2 || err != nil || dst[0][0] != 0 || dst[0][1] != 0.5 || dst[1][1] != -0.25 {
+			t.Errorf("%d frames: read %d, %v: %v", frames, n, err, dst)
+		}
 	}
 }
