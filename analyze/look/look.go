@@ -71,8 +71,11 @@ func Open(ctx context.Context, name, path string, csv capture.Options) (*File, *
 		var seen *stage.Survey
 		if in.RateHz > 0 && in.Frames >= leastFrames && l.Count == in.Frames && l.AC > 0 {
 			seen = stage.SurveyOf(pass, analyze.NewSignal(t, i+1, 0, 0, in.Frames, 1))
-			for _, p := range seen.Peaks[:min(mostLines, len(seen.Peaks))] {
-				level.Lines = append(level.Lines, Line{p.Hz, math.Sqrt(p.Power)})
+			for _, p := range seen.Peaks {
+				// What stands at the foot of DC is no line.
+				if p.Hz > seen.Lobe*seen.StepHz && len(level.Lines) < mostLines {
+					level.Lines = append(level.Lines, Line{p.Hz, math.Sqrt(p.Power)})
+				}
 			}
 		}
 		level.Text = sentence(t, i, seen)

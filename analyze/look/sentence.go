@@ -53,7 +53,7 @@ func strongest(ac float64, u string, seen *stage.Survey) string {
 		return "no line stands out, " + level(ac, u) + " in all"
 	}
 	p := seen.Peaks[0]
-	at := fmt.Sprintf("%s at %s", unit.Pretty(p.Hz, unit.Hertz), level(math.Sqrt(p.Power), u))
+	at := fmt.Sprintf("%.5g Hz at %s", p.Hz, level(math.Sqrt(p.Power), u))
 	if p.Power < ac*ac/2 {
 		return fmt.Sprintf("%s in all, strongest line %s", level(ac, u), at)
 	}
@@ -73,7 +73,7 @@ func hum(seen *stage.Survey, u string) string {
 	if f == 0 {
 		return "no mains hum seen"
 	}
-	name := fmt.Sprintf("%.4g Hz hum ", f)
+	name := fmt.Sprintf("%.3g Hz hum ", f)
 	top := seen.Peaks[0]
 	if isMultiple(top.Hz, f, seen.ToleranceHz()) {
 		return name + level(math.Sqrt(power), u) + " in all"
@@ -82,7 +82,7 @@ func hum(seen *stage.Survey, u string) string {
 }
 
 // comb finds the mains among the peaks: the supply (50 or 60 Hz, within 1 %)
-// whose orders 1 to 20 hold the most power, and that power; 0 for none. The
+// whose orders hold the most power, and that power; 0 for none. The
 // first or second order must be among them.
 func comb(seen *stage.Survey) (hz, power float64) {
 	tol := seen.ToleranceHz()
@@ -101,7 +101,7 @@ func comb(seen *stage.Survey) (hz, power float64) {
 		}
 		sum := 0.0
 		for _, p := range seen.Peaks {
-			if p.Hz < 20.5*base && isMultiple(p.Hz, base, tol) {
+			if isMultiple(p.Hz, base, tol) {
 				sum += p.Power
 			}
 		}
@@ -112,10 +112,14 @@ func comb(seen *stage.Survey) (hz, power float64) {
 	return hz, power
 }
 
+// mostOrders is the highest mains order looked for: above it some multiple
+// lies near every line.
+const mostOrders = 20
+
 func isMultiple(hz, base, tol float64) bool {
 	k := math.Round(hz / base)
 	// The base's own error grows with the order: 0.02 % of it.
-	return k >= 1 && math.Abs(hz-k*base) <= 2*tol+2e-4*hz
+	return k >= 1 && k <= mostOrders && math.Abs(hz-k*base) <= 2*tol+2e-4*hz
 }
 
 // level is an RMS in the words of the channel's unit.

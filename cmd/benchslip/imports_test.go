@@ -36,6 +36,7 @@ var shared = []string{
 // that gathers the others.
 var stages = map[string][]string{
 	"capture":          {"*"},
+	"capture/stimulus": {"capture/wav"}, // writes what is to be played
 	"analyze":          {},
 	"analyze/measures": {"*"},
 	"analyze/run":      {"*"},
@@ -48,7 +49,7 @@ var stages = map[string][]string{
 
 // owners of third-party modules, by import path prefix.
 var owners = map[string][]string{
-	"github.com/go-audio/":           {"capture/wav", "capture/stimulus"},
+	"github.com/go-audio/":           {"capture/wav"},
 	"github.com/pelletier/go-toml/":  {"analyze/job"},
 	"gonum.org/v1/gonum/dsp/fourier": {"analyze/internal/spectrum"},
 	"gonum.org/v1/gonum/":            {"analyze"},

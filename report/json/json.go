@@ -130,12 +130,23 @@ func (e *encoder) mapTree(v reflect.Value, place string) (node, error) {
 }
 
 // structTree writes the exported fields that carry a json tag other than "-",
-// in the order of the struct; "omitempty" leaves empty ones out.
+// in the order of the struct; "omitempty" leaves empty ones out. The fields of
+// an embedded struct stand among the others.
 func (e *encoder) structTree(v reflect.Value, place string) (node, error) {
 	n := node{open: "{", close: "}"}
 	for i := range v.NumField() {
 		f := v.Type().Field(i)
 		name, option, _ := strings.Cut(f.Tag.Get("json"), ",")
+		if f.Anonymous && name == "" && f.Type.Kind() == reflect.Struct {
+			inner, err := e.structTree(v.Field(i), place)
+			if err != nil {
+				return node{}, err
+			}
+			for j, key := range inner.keys {
+				n.add(key, inner.items[j])
+			}
+			continue
+		}
 		if !f.IsExported() || name == "-" || name == "" {
 			continue
 		}
