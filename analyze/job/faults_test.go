@@ -184,6 +184,8 @@ var faulty = []struct {
 	{"drive letter", base + "[takes.a]\nfile = ¦\"C:/takes/a.wav\"\n", []string{"is an absolute path"}},
 	{"empty path", base + "[takes.a]\nfile = ¦\"\"\n", []string{"is empty"}},
 	{"stimulus outside", base + "[takes.a]\nfile = \"a.wav\"\nstimulus = ¦\"../sweep.wav\"\n", []string{"climbs"}},
+	{"stimulus of no kind", base + "[takes.a]\nfile = \"a.wav\"\nstimulus = ¦\"sweeep from=20Hz to=20kHz\"\n", []string{"`stimulus`: unknown kind|sweep"}},
+	{"stimulus with a comma", base + "[takes.a]\nfile = \"a.wav\"\nstimulus = ¦\"sweep length=0,5s\"\n", []string{"`stimulus`|0.5"}},
 	{"include outside", "include = [¦\"../gear.toml\"]\n" + base, []string{"climbs"}},
 	{"include missing", "include = [¦\"gear.toml\"]\n" + base, []string{"no such file"}},
 	{"include as text", "include = ¦\"gear.toml\"\n" + base, []string{"a list of files"}},
@@ -247,8 +249,8 @@ var faulty = []struct {
 	{"open text", gain("clause = \"4.2¦\n"), []string{"not closed"}},
 	{"no value", gain("clause =¦\n"), []string{"where a value should stand"}},
 	{"utf-16", "¦\xff\xfef\x00o\x00", []string{"UTF-16|UTF-8"}},
-	{"zero bytes", "¦format = 1\n\x00\x00", []string{"zero bytes"}},
-	{"not utf-8", "¦title = \"caf\xe9\"\n", []string{"not UTF-8"}},
+	{"zero bytes", "format = 1\n¦\x00\x00", []string{"zero bytes"}},
+	{"not utf-8", "title = \"caf¦\xe9\"\n", []string{"not UTF-8"}},
 
 	// all at once, in the order of the text; positions count characters
 	{"many", "¦titel = \"x\"\n" + gain("¦att = \"1 kHz\"\nmin = ¦39.5\nmax = ¦\"40,5 dB\"\nclause = \"4.2\"\nclass = ¦\"mayor\"\n"),

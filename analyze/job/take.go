@@ -6,6 +6,7 @@ import (
 	"benchslip/analyze"
 	"benchslip/analyze/keys"
 	"benchslip/capture/recording"
+	"benchslip/capture/stimulus"
 )
 
 // readTake reads [takes.NAME] over [defaults].
@@ -98,11 +99,20 @@ func (r *reader) gearRef(n *node, name string) *analyze.Gear {
 	return nil
 }
 
-// stimulus is a WAV file inside the job's folder or a description; what the
-// description means is for the room that makes stimuli.
+// stimulus is a WAV file inside the job's folder or the description of one
+// that can be made.
 func (r *reader) stimulus(n *node, k keys.Key) string {
 	s := r.textOf(n, k, false)
-	if strings.HasSuffix(strings.ToLower(s), ".wav") && !r.anyPath {
+	if s == "" {
+		return ""
+	}
+	if !strings.HasSuffix(strings.ToLower(s), ".wav") {
+		if _, err := stimulus.Parse(s); err != nil {
+			r.add(n.at, "%s: %s", tick(k.Name), clean200(strings.TrimPrefix(err.Error(), "stimulus: ")))
+		}
+		return s
+	}
+	if !r.anyPath {
 		if _, why := confine(r.job.Dir, s, r.opt.AllowOutside); why != "" {
 			r.add(n.at, "%s: %s %s", tick(k.Name), quote(s), why)
 			return ""

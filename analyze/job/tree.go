@@ -112,8 +112,8 @@ func newSource(name string, index int, data []byte) *source {
 // on after them where that is safe, with the tables concerned marked broken.
 func parseTree(s *source, f *faults) *node {
 	root := newTable(pos{s, 0}, pos{s, 0})
-	if why := encoding(s.data); why != "" {
-		f.add(pos{s, 0}, "%s: save the file as UTF-8 text", why)
+	if why, off := encoding(s.data); why != "" {
+		f.add(pos{s, off}, "%s: save the file as UTF-8 text", why)
 		root.broken = true
 		return root
 	}
@@ -131,16 +131,22 @@ func parseTree(s *source, f *faults) *node {
 	return root
 }
 
-func encoding(data []byte) string {
-	switch {
-	case bytes.HasPrefix(data, []byte("\xff\xfe")), bytes.HasPrefix(data, []byte("\xfe\xff")):
-		return "the file is UTF-16"
-	case bytes.IndexByte(data, 0) >= 0:
-		return "the file holds zero bytes, so it is no text"
-	case !utf8.Valid(data):
-		return "the file is not UTF-8"
+// encoding says why the bytes are no text and where; "" when they are.
+func encoding(data []byte) (why string, off int) {
+	if bytes.HasPrefix(data, []byte("\xff\xfe")) || bytes.HasPrefix(data, []byte("\xfe\xff")) {
+		return "the file is UTF-16", 0
 	}
-	return ""
+	for i := 0; i < len(data); {
+		r, n := utf8.DecodeRune(data[i:])
+		switch {
+		case r == 0:
+			return "the file holds zero bytes, so it is no text", i
+		case r == utf8.RuneError && n == 1:
+			return "the file is not UTF-8", i
+		}
+		i += n
+	}
+	return "", 0
 }
 
 // builder turns the parser's expressions into the tree.

@@ -138,12 +138,13 @@ func For(measure string) []Key {
 	return out
 }
 
-// Own lists the names of the keys that the measure takes beside those that
-// every measure takes.
+// Own lists the names of the keys that a measure takes beside those that all
+// measures of a recording take.
 func Own(measure string) []string {
 	var out []string
 	for _, k := range For(measure) {
-		if k.Measures != nil {
+		// oneMain is all but three measures; no group of its own is as large.
+		if k.Measures != nil && len(k.Measures) < len(oneMain) {
 			out = append(out, k.Name)
 		}
 	}
