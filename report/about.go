@@ -14,20 +14,11 @@ import (
 type Pair struct{ Key, Value string }
 
 // Pairs lists a table of free keys in the order typed, then any others by
-// name. Empty values are left out.
+// name, cleaned. Empty values are left out.
 func Pairs(m map[string]string, order []string) []Pair {
-	var rest []string
-	for k := range m {
-		if !slices.Contains(order, k) {
-			rest = append(rest, k)
-		}
-	}
-	sort.Strings(rest)
-	var out []Pair
-	for _, k := range append(slices.Clone(order), rest...) {
-		if v, ok := m[k]; ok && strings.TrimSpace(v) != "" {
-			out = append(out, Pair{Clean(k), Clean(v)})
-		}
+	out := RawPairs(m, order)
+	for i := range out {
+		out[i] = Pair{Clean(out[i].Key), Clean(out[i].Value)}
 	}
 	return out
 }
@@ -130,12 +121,31 @@ func Bytes(n int64) string {
 	case n < 1000:
 		return count(int(n), "byte", "bytes")
 	case n < 1e6:
-		return Figures(float64(n)/1e3, 3) + " kB"
+		return Digits(float64(n)/1e3, 3) + " kB"
 	}
-	return Figures(float64(n)/1e6, 3) + " MB"
+	return Digits(float64(n)/1e6, 3) + " MB"
 }
 
 // ToolLine names the program: "benchslip 0.1.0".
 func ToolLine(s *slip.Slip) string {
 	return strings.TrimSpace(Clean(s.Tool.Name) + " " + Clean(s.Tool.Version))
+}
+
+// RawPairs is Pairs with keys and values as typed, for a renderer that makes
+// them safe in its own way.
+func RawPairs(m map[string]string, order []string) []Pair {
+	var rest []string
+	for k := range m {
+		if !slices.Contains(order, k) {
+			rest = append(rest, k)
+		}
+	}
+	sort.Strings(rest)
+	var out []Pair
+	for _, k := range append(slices.Clone(order), rest...) {
+		if v, ok := m[k]; ok && strings.TrimSpace(v) != "" {
+			out = append(out, Pair{k, v})
+		}
+	}
+	return out
 }

@@ -104,7 +104,7 @@ func closest(rows []Row) string {
 		return ""
 	}
 	r := &rows[at]
-	in := Figures(math.Abs(best), 2)
+	in := Digits(math.Abs(best), 2)
 	if math.Abs(best) >= 100 {
 		in = "over 100"
 	}
@@ -116,7 +116,7 @@ func closest(rows []Row) string {
 
 // RuleSentence says the decision rule in one sentence.
 func RuleSentence(r slip.Rule) string {
-	k := "k = " + Figures(r.Coverage, 3)
+	k := "k = " + Digits(r.Coverage, 3)
 	if r.Coverage == 2 {
 		k += ", about 95 %"
 	}

@@ -220,8 +220,8 @@ func plain(x float64) string {
 	return strconv.FormatFloat(x, 'f', -1, 64)
 }
 
-// Figures prints any other number of a sheet to n significant digits.
-func Figures(x float64, n int) string {
+// Digits prints any other number of a sheet to n significant digits.
+func Digits(x float64, n int) string {
 	if x == math.Trunc(x) && math.Abs(x) < 1e9 {
 		return plain(x)
 	}

@@ -73,7 +73,7 @@ func TestBoundsRoundOutward(t *testing.T) {
 func TestBoundaryRowsSpeakPlainly(t *testing.T) {
 	c := &slip.Check{Value: ptr(40.45), Uncertainty: ptr(0.12), Unit: "dB", Min: ptr(39.5), Max: ptr(40.5), Margin: ptr(0.05),
 		Probability: ptr(0.798), Verdict: slip.ConditionalPass}
-	want := "measured 40.45 dB, limit 40.5 dB, uncertainty 0.12 dB: passes, but not beyond doubt (about 80 in 100 that it conforms)"
+	want := "measured 40.45 dB, limit 40.5 dB, uncertainty 0.12 dB: passes, but not beyond doubt (about 80 in 100)"
 	if got := RowOf(c, 1, slip.Rule{Decision: "four-way"}).Say; got != want {
 		t.Errorf("got  %q\nwant %q", got, want)
 	}

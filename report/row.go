@@ -66,7 +66,7 @@ func RowOf(c *slip.Check, n int, rule slip.Rule) Row {
 		r.Margin = sc.Diff(*c.Margin)
 	}
 	if c.Coverage != nil && c.Uncertainty != nil && *c.Uncertainty > 0 {
-		r.Cover = "k = " + Figures(*c.Coverage, 3)
+		r.Cover = "k = " + Digits(*c.Coverage, 3)
 	}
 	if c.Measure == "entered" {
 		r.By = "entered by hand"
@@ -174,9 +174,9 @@ func say(r *Row, rule slip.Rule) string {
 		}
 		return tail(s)
 	case slip.ConditionalPass:
-		return tail(measured + "passes, but not beyond doubt" + odds(c.Probability))
+		return tail(measured + "passes, but not beyond doubt" + odds(c.Probability, false))
 	case slip.ConditionalFail:
-		return tail(measured + "fails, but not beyond doubt" + odds(c.Probability))
+		return tail(measured + "fails, but not beyond doubt" + odds(c.Probability, true))
 	case slip.NotMeasurable, slip.NotApplicable:
 		if c.Bound != nil && c.Value == nil {
 			return tail(sc.bound(c.Bound) + " at " + percent(c.Bound.Confidence) + " is all that can be said")
@@ -194,23 +194,27 @@ func (r *Row) Why() string {
 	return r.Code + ": " + r.Say
 }
 
-func percent(x float64) string { return Figures(100*x, 3) + " %" }
+func percent(x float64) string { return Digits(100*x, 3) + " %" }
 
-// odds puts the probability of conformity into words.
-func odds(p *float64) string {
+// odds puts the probability that a verdict is right into words: of conformity
+// for a pass, of its opposite for a fail.
+func odds(p *float64, fails bool) string {
 	if p == nil {
 		return ""
 	}
 	x := *p * 100
+	if fails {
+		x = 100 - x
+	}
 	switch {
 	case x > 99:
-		return " (more than 99 in 100 that it conforms)"
+		return " (more than 99 in 100)"
 	case x < 1:
-		return " (less than 1 in 100 that it conforms)"
+		return " (less than 1 in 100)"
 	case x >= 10 && x <= 90:
 		x = math.Round(x/5) * 5
 	}
-	return " (about " + strconv.Itoa(int(math.Round(x))) + " in 100 that it conforms)"
+	return " (about " + strconv.Itoa(int(math.Round(x))) + " in 100)"
 }
 
 // Part is one line of an uncertainty budget.
@@ -240,11 +244,11 @@ func (r *Row) Budget() []Part {
 	for _, l := range lines {
 		p := Part{Name: Clean(l.c.Name), Kind: Clean(l.c.Kind), Dof: "∞", U: r.Scale.Small(l.u)}
 		if l.c.Dof != nil {
-			p.Dof = Figures(*l.c.Dof, 3)
+			p.Dof = Digits(*l.c.Dof, 3)
 		}
 		if total > 0 {
 			p.Share = l.u * l.u / total
-			p.Percent = Figures(math.Round(100*p.Share), 3) + " %"
+			p.Percent = Digits(math.Round(100*p.Share), 3) + " %"
 			if p.Share > 0 && p.Share < 0.005 {
 				p.Percent = "< 1 %"
 			}

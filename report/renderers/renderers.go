@@ -10,6 +10,9 @@ import (
 	"io"
 
 	"benchslip/analyze/slip"
+	"benchslip/report"
+	"benchslip/report/figure"
+	"benchslip/report/html"
 	"benchslip/report/json"
 	"benchslip/report/text"
 )
@@ -24,6 +27,7 @@ type Renderer struct {
 // holds the hashes of the others.
 func All() []Renderer {
 	return []Renderer{
+		{"slip.html", html.Render},
 		{"slip.txt", text.Render},
 		{"slip.json", json.Render},
 	}
@@ -35,21 +39,30 @@ type File struct {
 	Data []byte
 }
 
-// Build renders every file of a slip: figures and their data first, slip.json
-// last, holding name, size and SHA-256 of the others. The slip is not changed;
-// the same slip gives the same bytes.
+// Build renders every file of a slip: the figures in plots/ with their data
+// beside them, the documents, and slip.json last, which holds name, size and
+// SHA-256 of the others. The slip is not changed; the same slip gives the same
+// bytes. Writing them to a folder is the caller's part.
 func Build(s *slip.Slip) ([]File, error) {
 	var files []File
 	done := *s
 	done.Files = nil
+	add := func(name string, data []byte) {
+		files = append(files, File{name, data})
+		h := sha256.Sum256(data)
+		done.Files = append(done.Files, slip.File{Name: name, SHA256: hex.EncodeToString(h[:]), Bytes: int64(len(data))})
+	}
+	for _, f := range report.Figures(s) {
+		svg, _ := figure.SVG(f.Figure, f.Name, true)
+		add("plots/"+f.Name+".svg", svg)
+		add("plots/"+f.Name+".csv", figure.CSV(f.Figure))
+	}
 	for _, r := range All() {
 		var b bytes.Buffer
 		if err := r.Render(&b, &done); err != nil {
 			return nil, fmt.Errorf("%s: %w", r.Name, err)
 		}
-		files = append(files, File{r.Name, b.Bytes()})
-		h := sha256.Sum256(b.Bytes())
-		done.Files = append(done.Files, slip.File{Name: r.Name, SHA256: hex.EncodeToString(h[:]), Bytes: int64(b.Len())})
+		add(r.Name, b.Bytes())
 	}
 	return files, nil
 }

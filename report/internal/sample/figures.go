@@ -40,10 +40,7 @@ func spectrum(take string, variant int) figure {
 				y[i] = -104 - 3*float64(h)
 			}
 			if math.Abs(f-1042*float64(h)) < 0.7 {
-				y[i] = 2 - float64(70+14*(h-2))*math.Min(1, float64(h-1))*math.Min(1, float64(variant+1)/2)
-				if y[i] < floor+5 && h > 1 {
-					y[i] = floor + 5
-				}
+				y[i] = math.Max(floor+5, harmonic(h, variant))
 			}
 		}
 	}
@@ -55,9 +52,17 @@ func spectrum(take string, variant int) figure {
 		Marks:   []analyze.Mark{{Kind: "tone", X: 1042, Y: 2, Label: "1.042 kHz"}, {Kind: "mains", X: 50, Y: -107, Label: "50 Hz"}, {Kind: "mains", X: 100, Y: -110, Label: "100 Hz"}},
 		Rules:   []analyze.Rule{{Label: "20 Hz", Vertical: true, At: 20}, {Label: "20 kHz", Vertical: true, At: 20000}}}
 	for h := 2; h <= 5; h++ {
-		f.Marks = append(f.Marks, analyze.Mark{Kind: "harmonic", X: 1042 * float64(h), Y: 2 - float64(70+14*(h-2))*float64(variant+1)/2, Label: fmt.Sprintf("H%d", h)})
+		f.Marks = append(f.Marks, analyze.Mark{Kind: "harmonic", X: 1042 * float64(h), Y: math.Max(-121, harmonic(h, variant)), Label: fmt.Sprintf("H%d", h)})
 	}
 	return f
+}
+
+// harmonic is the level of an order in dBu: clean, better, overdriven.
+func harmonic(h, variant int) float64 {
+	if h == 1 {
+		return 2
+	}
+	return []float64{-108, -112, -68}[variant] - 9*float64(h-2)
 }
 
 func comb() figure {
