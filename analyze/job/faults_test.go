@@ -242,6 +242,8 @@ var faulty = []struct {
 	// the text itself
 	{"quantity without quotes", gain("at = ¦1042 Hz\n"), []string{`write at = "1042 Hz"`}},
 	{"glued quantity without quotes", gain("at = ¦1042Hz\n"), []string{`write at = "1042Hz"`}},
+	{"decimal comma without quotes", gain("min = ¦39,5\n"), []string{"decimal comma|\"39.5 dB\""}},
+	{"quantity with a comma, without quotes", gain("min = ¦39,5 dB\n"), []string{`write min = "39.5 dB"`}},
 	{"word without quotes", gain("class = ¦major\n"), []string{`write class = "major"`}},
 	{"path without quotes", base + "[takes.a]\nfile = ¦takes\\a.wav\n", []string{`write file = "takes/a.wav"`}},
 	{"capital True", gain("optional = ¦True\n"), []string{"true or false"}},

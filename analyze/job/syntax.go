@@ -45,6 +45,13 @@ func unquotedText(key, value string) string {
 		return "text stands in quotes, and paths take /: " + write(strings.ReplaceAll(value, `\`, "/"))
 	}
 	q, err := unit.Parse(value)
+	if point := strings.Replace(value, ",", ".", 1); err != nil && point != value {
+		if q, e := unit.Parse(point); e == nil && q.Unit.Dim == unit.None {
+			return "decimal comma: a quantity stands in quotes, with a point and its unit, like \"" + clean(point) + " dB\""
+		} else if e == nil {
+			return "decimal comma: a quantity stands in quotes, with a point: " + write(point)
+		}
+	}
 	switch {
 	case err == nil && q.Unit.Dim == unit.None:
 		return ""
