@@ -235,6 +235,13 @@ func TestWideInDB(t *testing.T) {
 	if c.Interval != nil {
 		t.Errorf("120 %%: interval %v", *c.Interval)
 	}
+	c = judged(res("V", 1, 0.3), "", "10 V", FourWay) // linear units have the ends too
+	if c.Interval == nil || math.Abs(c.Interval[0]-0.7) > 1e-12 || *c.Uncertainty != 0.3 {
+		t.Errorf("30 %% in V: %v", c.Interval)
+	}
+	if c = judged(res("V", 1, 1.2), "", "10 V", FourWay); c.Interval != nil || *c.Uncertainty != 1.2 {
+		t.Errorf("120 %% in V: %v", c.Interval)
+	}
 	c = judged(res("W", 1, 0.02), "", "40 dBm", FourWay) // powers: 10 lg
 	near(t, "power: U", c.Uncertainty, 0.0868588964, 1e-9)
 	near(t, "power: value", c.Value, 30, 1e-9)

@@ -158,7 +158,9 @@ func (v view) uncertainty(e estimate) (*float64, *[2]float64) {
 	case !(rel > wide):
 	case rel < widest && finite(lo):
 		ends = &[2]float64{lo, hi}
-		half = math.Max(hi-v.number(e.y), v.number(e.y)-lo)
+		if v.unit.IsLog() {
+			half = math.Max(hi-v.number(e.y), v.number(e.y)-lo)
+		}
 	case v.unit.IsLog():
 		half = hi - v.number(e.y)
 	}

@@ -109,7 +109,7 @@ func (s *lcg) next() float64 {
 // corrected sum.
 func TestBoundHolds(t *testing.T) {
 	s := lcg(12345)
-	const trials = 4000
+	const trials = 2000
 	for _, c := range []struct {
 		name   string
 		rms    []float64
@@ -207,5 +207,28 @@ func TestFloor(t *testing.T) {
 		if math.Abs(20*math.Log10(hi)-want[0]) > 0.01 || math.Abs(20*math.Log10(lo)-want[1]) > 0.01 {
 			t.Errorf("%g dB: %.2f..%.2f dB, want %v", d, 20*math.Log10(lo), 20*math.Log10(hi), want)
 		}
+	}
+}
+
+// LineU with a share that was itself found, from one average.
+func TestLineUEstimatedShare(t *testing.T) {
+	s := lcg(777)
+	const trials, dof, rms, share = 20000, 2, 0.5, 1.0
+	var sum, squares float64
+	for range trials {
+		a, b := rms+s.next()*math.Sqrt(share/2), s.next()*math.Sqrt(share/2)
+		found := 0.0
+		for range dof {
+			g := s.next()
+			found += share * g * g / dof
+		}
+		net := a*a + b*b - found
+		sum += net
+		squares += net * net
+	}
+	mean := sum / trials
+	near(t, math.Sqrt(squares/trials-mean*mean), LineU(rms*rms, share, dof), 0.02, "scatter with an estimated share", 0)
+	if LineU(-1, 2, 0) != 2 {
+		t.Error("a negative power changes the noise's own scatter")
 	}
 }
