@@ -36,26 +36,29 @@ type lost struct {
 	line     int
 }
 
-// breach is a place where text or blank rows stand among the samples: before
-// row at.
+// breach is a place where text stands among the samples: before row at.
 type breach struct {
-	at    int
-	line  int
-	rows  []row // text rows, at most 64 kept
-	count int   // all rows
-	blank int   // blank rows
+	at   int
+	line int
+	rows []row // the text rows, at most 64
 }
+
+// hole is a place of blank rows among the samples: before row at.
+type hole struct{ at, line int }
 
 // body is the table read.
 type body struct {
 	col      []column
 	n        int
 	breaches []breach
+	holes    []hole // at most maxLost
+	nHoles   int
 	jumps    []jump // where line number - row changes
 	endLine  int
 	cut      int // line of a last row that was cut off and left out; 0: none
 	footer   []row
-	short    int // line from which rows end early
+	short    int // line from which rows end early; 0: none
+	shortAt  int // its row
 	nuls     int
 }
 
@@ -73,8 +76,6 @@ func (t *body) lineOf(n int) int {
 	}
 	return n + off
 }
-
-const odd = 64 // at most so many irregular cells of a row are looked at one by one
 
 type oddCell struct {
 	c int
@@ -99,7 +100,8 @@ func (f *file) scan(lay *layout) (*body, error) {
 		digits = make([]int, w)
 		room   = 0
 		odds   []oddCell
-		open   *breach
+		open   *breach // text rows since the last row of samples
+		gapAt  int     // line of the first blank row since then
 		budget = len(b) - p + w
 		off    = math.MinInt
 	)
@@ -189,8 +191,10 @@ func (f *file) scan(lay *layout) (*body, error) {
 		line += rowLines
 
 		if len(odds) == 0 && c >= w && !wide {
-			if open != nil {
-				open = nil
+			open = nil
+			if gapAt > 0 {
+				t.addHole(gapAt)
+				gapAt = 0
 			}
 			if thisLine-t.n != off {
 				off = thisLine - t.n
@@ -219,25 +223,34 @@ func (f *file) scan(lay *layout) (*body, error) {
 			case !ended && t.n > 1:
 				t.cut = thisLine
 				what = isNothing
-				if open == nil {
-					continue
-				}
 			case t.short == 0:
-				t.short = thisLine
+				t.short, t.shortAt = thisLine, t.n
 			}
 		}
-		if what != isSamples {
+		switch what {
+		case isNothing:
+			if gapAt == 0 {
+				gapAt = thisLine
+			}
+			continue
+		case isText:
 			if open == nil {
+				if len(t.breaches) == maxBreaches {
+					return nil, f.fault(thisLine, recording.ErrFormat, fmt.Sprintf("text stands among the samples in over %d places", maxBreaches), "export the samples alone")
+				}
 				t.breaches = append(t.breaches, breach{at: t.n, line: thisLine})
 				open = &t.breaches[len(t.breaches)-1]
 			}
-			open.count++
-			if what == isNothing {
-				open.blank++
-			} else if len(open.rows) < 64 {
+			if len(open.rows) < 64 {
 				open.rows = append(open.rows, row{thisLine, b[rowStart:rowEnd]})
 			}
 			continue
+		}
+		if gapAt > 0 {
+			if open == nil {
+				t.addHole(gapAt)
+			}
+			gapAt = 0
 		}
 		open = nil
 		if t.short > 0 && c >= w && t.short != thisLine {
@@ -311,7 +324,9 @@ func (lay *layout) judge(odds []oddCell, plain, c int, wide bool) int {
 			}
 			if k == prose {
 				proseCore = true
-				if i == lay.first {
+				// Text in the first column makes the row text, unless it looks
+				// like a damaged number or clock time.
+				if r := odds[next-1].raw; i == lay.first && !(len(r) > 0 && (r[0]-'0' <= 9 || r[0] == '-' || r[0] == '+' || r[0] == '.' || r[0] == '#')) {
 					firstProse = true
 				}
 			}
@@ -375,7 +390,7 @@ func (f *file) storeOdd(k *column, c *cell, n, line int) {
 		k.lose(n, marker, c.why, line)
 	case prose:
 		if k.text == 0 {
-			k.text = line
+			k.text, k.say = line, short(words(c.raw[:min(len(c.raw), 200)]))
 		}
 		k.lose(n, prose, "not a number", line)
 	}
@@ -438,7 +453,17 @@ func (k *column) lose(n int, kd kind, why string, line int) {
 	}
 }
 
-const maxLost = 1 << 16
+const (
+	maxLost     = 1 << 16 // runs or holes kept
+	maxBreaches = 1 << 12 // places of text among samples
+)
+
+func (t *body) addHole(line int) {
+	t.nHoles++
+	if len(t.holes) < maxLost {
+		t.holes = append(t.holes, hole{t.n, line})
+	}
+}
 
 // closeBody takes what stands behind the last sample as a footer, and a
 // single short last row as cut off.
@@ -446,6 +471,30 @@ func (f *file) closeBody(t *body) {
 	if i := len(t.breaches) - 1; i >= 0 && t.breaches[i].at == t.n {
 		t.footer = t.breaches[i].rows
 		t.breaches = t.breaches[:i]
+	}
+	if t.short > 0 && t.shortAt == t.n-1 && t.n > 2 {
+		t.cut = t.short
+		t.dropLast()
+	}
+}
+
+// dropLast leaves out the last row.
+func (t *body) dropLast() {
+	t.n--
+	for c := range t.col {
+		k := &t.col[c]
+		if v := k.v[t.n]; v == v && k.count[clock] == 0 {
+			k.count[number]--
+		} else if v == v {
+			k.count[clock]--
+		}
+		k.v = k.v[:t.n]
+		if i := len(k.lost) - 1; i >= 0 && k.lost[i].to > t.n {
+			k.count[k.lost[i].kind]--
+			if k.lost[i].to--; k.lost[i].to == k.lost[i].from {
+				k.lost = k.lost[:i]
+			}
+		}
 	}
 }
 

@@ -34,6 +34,7 @@ type cell struct {
 	unit  string // unit glued to the number, canonical; "" for none
 	stamp stamp  // for kind clock
 	why   string // for kind marker
+	raw   []byte // for kind prose: the text
 }
 
 // overrange is the value from which a number is taken as a marker: instruments
@@ -96,7 +97,7 @@ func (s style) read(b []byte) cell {
 	if st, ok := readStamp(b); ok {
 		return cell{kind: clock, stamp: st}
 	}
-	return cell{kind: prose}
+	return cell{kind: prose, raw: b}
 }
 
 var minusSign = []byte("\u2212")

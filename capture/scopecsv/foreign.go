@@ -33,16 +33,29 @@ func (f *file) refuseForeign() error {
 	case bytes.HasPrefix(start, []byte("<")):
 		return no("markup, not a table of samples", "export the samples as a table")
 	}
-	line := 1
-	for p := 0; p < len(b); {
-		text, next := lineAt(b, p)
-		for i, c := range text {
-			if c < 0x20 && c != '\t' && c != 0 && c != '\f' && c != 0x0b && c != 0x1a && c != 0x1b || c == 0x7f {
-				return f.fault(line, recording.ErrFormat, fmt.Sprintf("a binary byte 0x%02x at column %d in a table of text", c, i+1), "export the samples as a table")
+	for i, c := range b {
+		if binary[c] {
+			line, at := 1, 0
+			for at < i {
+				_, next := lineAt(b, at)
+				if next > i {
+					break
+				}
+				at = next
+				line++
 			}
+			return f.fault(line, recording.ErrFormat, fmt.Sprintf("a binary byte 0x%02x at column %d in a table of text", c, i-at+1), "export the samples as a table")
 		}
-		p = next
-		line++
 	}
 	return nil
 }
+
+// binary marks bytes that stand in no text. NUL is dealt with by the reader,
+// 0x1A was the end of text files once.
+var binary = func() (t [256]bool) {
+	for c := range 0x20 {
+		t[c] = c != 0 && c != '\t' && c != '\n' && c != '\r' && c != '\f' && c != 0x0b && c != 0x1a
+	}
+	t[0x7f] = true
+	return t
+}()

@@ -12,9 +12,10 @@ import (
 type heads struct {
 	col   []header
 	named bool // a header row was found
-	rows  int  // how many of the last rows before the samples belong to it
 	line  int  // the header row's line
 	pre   []int
+	extra map[int]string // names over columns without samples
+	under map[int]string // what the units row holds there
 }
 
 // comment marks that may stand before a header.
@@ -37,7 +38,7 @@ func (f *file) findHeads(lay *layout, numeric []bool) (*heads, error) {
 			marker = true
 			continue
 		}
-		if units == nil && isUnits(cells) {
+		if units == nil && f.isUnits(lay, cells, numeric) {
 			units, unitsLine = cells, i
 			h.pre = append(h.pre, i)
 			if h.named {
@@ -45,17 +46,18 @@ func (f *file) findHeads(lay *layout, numeric []bool) (*heads, error) {
 			}
 			continue
 		}
-		if h.named {
-			break
-		}
-		if !f.isNames(lay, cells, numeric, units != nil, marker) {
+		if h.named || !f.isNames(lay, cells, numeric, units != nil, marker) {
 			break
 		}
 		h.named, h.line = true, lay.pre[i].line
 		h.pre = append(h.pre, i)
-		for c := range h.col {
-			if c < len(cells) {
-				h.col[c] = readHeader(cells[c])
+		h.extra = map[int]string{}
+		for c, t := range cells {
+			if c < lay.width {
+				h.col[c] = readHeader(t)
+			}
+			if t != "" && (c >= lay.width || !numeric[c]) {
+				h.extra[c] = t
 			}
 		}
 		if units != nil {
@@ -71,9 +73,19 @@ func (f *file) findHeads(lay *layout, numeric []bool) (*heads, error) {
 		}
 	}
 	for c := range h.col {
-		if c < len(units) && units[c] != "" {
-			unit, q, fac, _ := unitsCell(units[c])
-			h.col[c].unit, h.col[c].q, h.col[c].f, h.col[c].from = unit, q, fac, fmt.Sprintf("the units row, line %d", lay.pre[unitsLine].line)
+		if c < len(units) && units[c] != "" && numeric[c] {
+			if unit, q, fac, ok := unitsCell(units[c]); ok {
+				h.col[c].unit, h.col[c].q, h.col[c].f, h.col[c].from = unit, q, fac, fmt.Sprintf("the units row, line %d", lay.pre[unitsLine].line)
+			}
+		}
+	}
+	// Settings over columns of their own: "Start", "Increment", their values
+	// in the row below, which may be missing.
+	h.under = map[int]string{}
+	for c := range h.extra {
+		h.under[c] = ""
+		if c < len(units) {
+			h.under[c] = units[c]
 		}
 	}
 	return h, nil
@@ -194,16 +206,19 @@ func joinUnits(s string) []string {
 	return out
 }
 
-func isUnits(cells []string) bool {
+// isUnits says whether the cells over the columns of numbers are units; a
+// column that counts may have a word such as "Sequence" there.
+func (f *file) isUnits(lay *layout, cells []string, numeric []bool) bool {
 	n := 0
-	for _, c := range cells {
-		if c == "" {
+	for c, t := range cells {
+		if t == "" || c >= len(numeric) || !numeric[c] {
 			continue
 		}
-		if _, _, _, ok := unitsCell(c); !ok {
+		if _, _, _, ok := unitsCell(t); ok {
+			n++
+		} else if !indexWord(t) {
 			return false
 		}
-		n++
 	}
 	return n > 0
 }
@@ -212,23 +227,21 @@ func isUnits(cells []string) bool {
 func (f *file) isNames(lay *layout, cells []string, numeric []bool, units, marker bool) bool {
 	first, filled := true, 0
 	known := false
+	var over []string // names over columns of numbers
 	for c, t := range cells {
-		if t == "" {
+		if t == "" || c >= len(numeric) || !numeric[c] {
 			continue
 		}
 		filled++
-		cl := lay.read([]byte(t))
-		switch cl.kind {
+		over = append(over, t)
+		switch cl := lay.read([]byte(t)); cl.kind {
 		case number, clock:
 			// Channels may be called 1, 2, 4; the first name is a word.
 			if first || cl.V != float64(int(cl.V)) || cl.V < 0 || cl.V > 999 || strings.ContainsAny(t, ".,eE+-:/") {
 				return false
 			}
 		}
-		if c < len(numeric) && numeric[c] {
-			hd := readHeader(t)
-			known = known || hd.q != unknown || timeWord(t)
-		}
+		known = known || readHeader(t).q != unknown || timeWord(t)
 		first = false
 	}
 	if filled == 0 || marker && !known {
@@ -239,32 +252,15 @@ func (f *file) isNames(lay *layout, cells []string, numeric []bool, units, marke
 	}
 	// "Vertical Units,V" before two columns is a setting, not a header; and so
 	// is a setting whose name is known.
-	if filled == 2 && !first {
-		a, b := "", ""
-		for _, t := range cells {
-			if t != "" && a == "" {
-				a = t
-			} else if t != "" {
-				b = t
-			}
-		}
-		if _, _, _, ok := unitsCell(b); ok && !timeWord(a) {
-			if _, _, _, ok := unitsCell(a); !ok {
-				return false
-			}
-		}
-		if settingWord(a) {
+	if filled == 2 {
+		_, _, _, a := unitsCell(over[0])
+		_, _, _, b := unitsCell(over[1])
+		if b && !a && !timeWord(over[0]) || settingWord(over[0]) && !timeWord(over[0]) && !indexWord(over[0]) && over[0] != "Source" {
 			return false
 		}
 	}
 	if filled == 1 {
-		t := cells[0]
-		for _, c := range cells {
-			if c != "" {
-				t = c
-			}
-		}
-		if strings.ContainsAny(t, ":=") || settingWord(t) || len(t) > 60 {
+		if t := over[0]; strings.ContainsAny(t, ":=") || settingWord(t) && !channelName(t) || len(t) > 60 {
 			return false
 		}
 	}

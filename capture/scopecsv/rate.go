@@ -35,13 +35,21 @@ func pow10(e int) float64 {
 // a number of up to `digits` significant digits, none finer than 10^last.
 func rounding(last, digits int) func(t float64) float64 {
 	finest := pow10(last)
+	lo, hi, worth := 0.0, 0.0, finest // the decade last met, [lo, hi)
 	return func(t float64) float64 {
 		a := math.Abs(t)
+		if a >= lo && a < hi {
+			return worth
+		}
 		if a == 0 {
 			return finest
 		}
 		e := int(math.Floor(math.Log10(a)))
-		return math.Max(finest, pow10(e-digits+1))
+		lo, hi = pow10(e), pow10(e+1)
+		if worth = pow10(e - digits + 1); worth <= finest {
+			lo, worth = 0, finest
+		}
+		return worth
 	}
 }
 
@@ -236,7 +244,7 @@ func rounded(v, slack float64) float64 {
 // roundRate returns the rate for a step known within slack (relative): as the
 // rounder of rate and step.
 func roundRate(step, slack float64) float64 {
-	slack = math.Max(slack, 1e-13)
+	slack = math.Max(slack, 2e-10) // rounding errors of the sums over a million rows
 	rate := rounded(1/step, slack)
 	s := rounded(step, slack)
 	if len(strconv.FormatFloat(s, 'e', -1, 64)) < len(strconv.FormatFloat(rate, 'e', -1, 64)) {

@@ -8,8 +8,9 @@ import (
 
 // figure is a quantity stated in the settings.
 type figure struct {
-	v    float64 // in s, Hz, V or plain
+	v    float64 // in s, V or plain
 	half float64 // half a unit of the last digit written, in the same unit
+	rate float64 // 1/v as written, for intervals
 	text string  // as written
 	key  string
 	line int
@@ -19,14 +20,13 @@ type figure struct {
 // settings are what the rows beside the samples say.
 type settings struct {
 	text     map[string]string // all pairs, as written
-	interval []figure          // s between samples
-	rate     []figure          // samples a second, Hz
+	interval []figure          // s between samples, from an interval or a rate
 	start    []figure          // s, time of the first sample
 	length   []figure          // number of samples
 	scale    []figure          // V per count
-	offset   bool              // counts have an offset too
+	offset   string            // name of a setting that gives counts an offset too
 	timeUnit figure            // unit stated for the horizontal axis
-	valUnit  figure            // unit stated for the vertical axis
+	valUnit  []figure          // units stated for the vertical axis, one a channel
 	probe    []figure
 	mode     string // acquisition mode, as written
 	modeLine int

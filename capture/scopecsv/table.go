@@ -30,15 +30,27 @@ func parse(path string, raw []byte, size int64, opt recording.Options) (*table, 
 // assembly gathers the recording.
 type assembly struct {
 	*file
-	lay   *layout
-	t     *body
-	heads *heads
-	set   *settings
-	info  recording.Info
-	time  int // column of time; -1: none
-	stamp []float64
-	chans []int // columns of channels
-	out   [][]float64
+	lay    *layout
+	t      *body
+	heads  *heads
+	set    *settings
+	beside []bool // columns of settings beside the samples
+	notes  []int  // columns with one or two values
+	role   []role
+	info   recording.Info
+
+	time       int                   // column of time; -1: none
+	index      int                   // column that counts rows; -1: none
+	how0       string                // how the time column was found
+	maybeCount bool                  // the time column may be a count
+	stamp      []float64             // s, one a row; nil without time column
+	grain      func(float64) float64 // rounding of a stamp, s
+	timed      *timing
+	reversed   bool  // the rows were turned round
+	joints     []int // rows that do not follow the one before
+	rows       int   // rows in the file
+	chans      []int // columns of channels
+	out        [][]float64
 }
 
 func (a *assembly) assume(format string, args ...any) {
@@ -50,13 +62,9 @@ func (a *assembly) flag(code string, channel int, from, to *float64, format stri
 }
 
 func (f *file) assemble(lay *layout, t *body, size int64) (*table, error) {
-	a := &assembly{file: f, lay: lay, t: t, time: -1}
-	a.info = recording.Info{Format: "scope CSV", Kind: recording.Scope, Bytes: size}
-	numeric := make([]bool, lay.width)
-	for c := range numeric {
-		k := t.col[c].count
-		numeric[c] = k[number]+k[clock] > 0
-	}
+	a := &assembly{file: f, lay: lay, t: t, time: -1, index: -1, rows: t.n}
+	a.info = recording.Info{Format: "scope CSV", Kind: recording.Scope, Bytes: size, Frames: int64(t.n)}
+	numeric := a.holdsNumbers()
 	var err error
 	if a.heads, err = f.findHeads(lay, numeric); err != nil {
 		return nil, err
@@ -67,14 +75,13 @@ func (f *file) assemble(lay *layout, t *body, size int64) (*table, error) {
 		mark = "a comma"
 	}
 	a.assume("%s, cells parted by %s, decimals behind %s", f.how, sepName(lay.sep), mark)
-	if err := a.assignColumns(numeric); err != nil {
-		return nil, err
-	}
-	if err := a.fixTime(); err != nil {
-		return nil, err
-	}
-	if err := a.channels(); err != nil {
-		return nil, err
+	for _, step := range []func() error{
+		func() error { return a.assignColumns(numeric) },
+		a.checkBreaches, a.readTime, a.fixRate, a.flagBreaches, a.channels, a.checkLength,
+	} {
+		if err := step(); err != nil {
+			return nil, err
+		}
 	}
 	a.finish()
 	return &table{info: a.info, columns: a.out}, nil
