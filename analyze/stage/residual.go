@@ -10,7 +10,8 @@ import (
 
 // residual is the density of the signal less DC and every fitted line.
 // Segments of an eighth of the span, 2 s at most, three quarters overlapped:
-// with that overlap every sample but those at the two ends counts alike.
+// with that overlap every sample but those at the two ends counts alike, which
+// costs a tenth of the averages at most.
 func (l *Lines) residual() *spectrum.Density {
 	s := l.Sig
 	n := s.Len()
@@ -38,25 +39,7 @@ func (l *Lines) residual() *spectrum.Density {
 	if count > 0 {
 		l.Residual = power / float64(count)
 	}
-	l.scale(d)
 	return d
-}
-
-// scale makes the density integrate to the mean square over the whole span
-// (every sample counted alike, tapered ends too).
-func (l *Lines) scale(d *spectrum.Density) {
-	sum := 0.0
-	for _, v := range d.S {
-		sum += v * d.StepHz
-	}
-	if sum > 0 && l.Residual > 0 {
-		r := l.Residual / sum
-		if r > 0.5 && r < 2 {
-			for k := range d.S {
-				d.S[k] *= r
-			}
-		}
-	}
 }
 
 // remover takes DC and all lines off samples read in order.
