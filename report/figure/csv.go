@@ -1,6 +1,7 @@
 package figure
 
 import (
+	"math"
 	"strconv"
 	"strings"
 
@@ -8,10 +9,11 @@ import (
 	"benchslip/report"
 )
 
-// CSV gives the data of a figure in the units of its axes, every point, none
-// thinned (RFC 4180: comma, CR LF). Columns: part (the kind of curve, "mark"
-// or "rule"), name, x, y, and low for envelopes. A rule leaves the other axis
-// empty.
+// CSV gives the data that a figure draws, in the units of its axes (RFC 4180:
+// comma, CR LF). Columns: part (the kind of curve, "mark" or "rule"), name, x,
+// y, and low for envelopes. A curve too long to be drawn point by point is
+// given as drawn, by the smallest and largest value of every pixel column, and
+// its part says "extremes". A rule leaves the other axis empty.
 func CSV(f *analyze.Figure) []byte {
 	var b strings.Builder
 	head := func(a analyze.Axis, fallback string) string {
@@ -34,19 +36,40 @@ func CSV(f *analyze.Figure) []byte {
 		b.WriteString("\r\n")
 	}
 	row("part", "name", head(f.X, "x"), head(f.Y, "y"), "low")
-	for _, s := range f.Series {
+	point := func(lead string, x, y float64, low string) {
+		b.WriteString(lead + num(x) + "," + num(y) + "," + low + "\r\n")
+	}
+	fr := newFrame(f, Width)
+	for i, s := range f.Series {
 		// Names are escaped once a curve, not once a point.
-		lead := report.Cell(s.Kind) + "," + report.Cell(s.Name) + ","
-		for i := range min(len(s.X), len(s.Y)) {
-			b.WriteString(lead)
-			b.WriteString(num(s.X[i]))
-			b.WriteByte(',')
-			b.WriteString(num(s.Y[i]))
-			b.WriteByte(',')
-			if i < len(s.Low) {
-				b.WriteString(num(s.Low[i]))
+		part, name := report.Cell(s.Kind)+",", report.Cell(s.Name)+","
+		c := fr.curves[i]
+		if len(c.x) <= 2*fr.columns {
+			for k := range min(len(s.X), len(s.Y)) {
+				low := ""
+				if k < len(s.Low) {
+					low = num(s.Low[k])
+				}
+				point(part+name, s.X[k], s.Y[k], low)
 			}
-			b.WriteString("\r\n")
+			continue
+		}
+		part = report.Cell(s.Kind+" extremes") + ","
+		cols, _ := columns(c.x, c.y, fr.x, fr.columns)
+		lows := cols
+		if c.low != nil {
+			lows, _ = columns(c.x, c.low, fr.x, fr.columns)
+		}
+		for k, col := range cols {
+			if c.low != nil {
+				low := math.Min(lows[k].y1, lows[k].y2)
+				point(part+name, col.x1/fr.x.factor, math.Max(col.y1, col.y2)/fr.y.factor, num(low/fr.y.factor))
+				continue
+			}
+			point(part+name, col.x1/fr.x.factor, col.y1/fr.y.factor, "")
+			if col.n > 1 && (col.x1 != col.x2 || col.y1 != col.y2) {
+				point(part+name, col.x2/fr.x.factor, col.y2/fr.y.factor, "")
+			}
 		}
 	}
 	for _, m := range f.Marks {
@@ -62,11 +85,11 @@ func CSV(f *analyze.Figure) []byte {
 	return []byte(b.String())
 }
 
-// num writes a number to eight significant digits, "" when it is not finite.
+// num writes a number to seven significant digits, "" when it is not finite.
 func num(v float64) string {
 	if !finite(v) {
 		return ""
 	}
-	v, _ = strconv.ParseFloat(strconv.FormatFloat(v, 'e', 7, 64), 64)
+	v, _ = strconv.ParseFloat(strconv.FormatFloat(v, 'e', 6, 64), 64)
 	return strconv.FormatFloat(v, 'g', -1, 64)
 }
