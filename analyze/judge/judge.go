@@ -89,6 +89,7 @@ func Row(c *slip.Check, res analyze.Result, lim Limits, rule slip.Rule, seconds 
 		r.refused(fault("the measure gave neither a value nor a reason"), nil)
 	}
 	r.lacking(res.Lacking)
+	r.conditional(res.Conditional)
 }
 
 // fault is a defect of a measure, which must not look like a verdict.
@@ -238,6 +239,26 @@ func (r *row) lacking(keys []string) {
 		if r.Reason == "" {
 			r.Reason = fmt.Sprintf("%s: the value needs %s, which is not stated", f.Code, what)
 		}
+	}
+}
+
+// conditional keeps a row from a full pass for a reason that the measure
+// gives: its value holds, but not beyond doubt. The other two rules know no
+// state between pass and fail, so there the reason stands as a note.
+func (r *row) conditional(why string) {
+	if why == "" || !r.judges() || r.Verdict != slip.Pass {
+		return
+	}
+	if r.rule.Decision == Simple || r.rule.Decision == Guarded {
+		r.Notes = once(r.Notes, why)
+		return
+	}
+	r.Verdict = slip.ConditionalPass
+	if r.Reason == "" {
+		r.Reason = why
+	}
+	if r.Advice == "" {
+		r.Advice = rangeAdvice(r.Measure)
 	}
 }
 

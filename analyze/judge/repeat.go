@@ -109,6 +109,9 @@ func joined(names []string, results []analyze.Result) analyze.Result {
 		if r.FullScaleSine != out.FullScaleSine {
 			out.FullScaleSine = 0
 		}
+		if out.Conditional == "" {
+			out.Conditional = r.Conditional
+		}
 		for _, f := range r.Flags {
 			out.Flags = addFlag(out.Flags, f)
 		}

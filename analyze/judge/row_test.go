@@ -159,6 +159,47 @@ func TestLacking(t *testing.T) {
 	}
 }
 
+// A measure may keep its value from a full pass, whatever the room: four-way
+// says conditional-pass with the measure's reason, a fail stays one, the other
+// rules (which know no state between) keep their verdict and note the reason.
+func TestConditional(t *testing.T) {
+	const why = "floor-limited: the recorder's own harmonics are too near"
+	for _, c := range []struct {
+		y              float64
+		decision, want string
+	}{{0.5, FourWay, cp}, {0.5, "", cp}, {0.5, Guarded, p}, {0.5, Simple, p}, {0.99, FourWay, cp}, {1.01, FourWay, cf}, {1.5, FourWay, f}} {
+		r := res("%", c.y/100, 0.001)
+		r.Conditional = why
+		got := &slip.Check{Measure: "thd", Class: "major"}
+		Row(got, r, Limits{Max: q("1 %")}, slip.Rule{Decision: c.decision, Coverage: 2}, 10)
+		if got.Verdict != c.want {
+			t.Errorf("%g %%, %q: %s, want %s", c.y, c.decision, got.Verdict, c.want)
+		}
+		if c.y != 0.5 {
+			continue
+		}
+		if c.want == cp && (got.Reason != why || !strings.Contains(got.Advice, "`loop`")) {
+			t.Errorf("%q: reason %q advice %q", c.decision, got.Reason, got.Advice)
+		}
+		if c.want == p && (got.Reason != "" || len(got.Notes) != 1 || got.Notes[0] != why) {
+			t.Errorf("%q: reason %q notes %q", c.decision, got.Reason, got.Notes)
+		}
+	}
+	// Neither limits nor class info: nothing to keep from a pass.
+	r := res("%", 0.005, 0.001)
+	r.Conditional = why
+	if got := judged(r, "", "", FourWay); got.Verdict != slip.NotJudged || got.Reason != "" {
+		t.Errorf("without limits: %s %q", got.Verdict, got.Reason)
+	}
+	// It survives a mean of takes and a comparison.
+	if m := Repeat([]string{"a", "b"}, []analyze.Result{res("%", 0.005, 0.001), r}); m.Conditional != why {
+		t.Errorf("mean: %q", m.Conditional)
+	}
+	if d := Against("thd", [2]string{"a", "b"}, r, res("%", 0.005, 0.001)); d.Conditional != why {
+		t.Errorf("comparison: %q", d.Conditional)
+	}
+}
+
 func TestClassesAndRefusals(t *testing.T) {
 	c := &slip.Check{Measure: "gain", Class: Info}
 	Row(c, inDB(40, 0.1), Limits{Max: q("30 dB")}, slip.Rule{}, 0)
