@@ -186,17 +186,22 @@ func (a *assembly) readSettings() {
 
 // readPair reads one row of settings: a name and one value a channel.
 func (a *assembly) readPair(r row) {
-	key, value := keyValue(r.text, a.lay.sep)
-	var values []string
-	for _, v := range split([]byte(value), a.lay.sep, nil) {
-		if w := words(trimmed(v)); w != "" {
-			values = append(values, w)
+	cells := split(r.text, a.lay.sep, nil)
+	if a.lay.sep != ' ' && len(cells) > 1 {
+		var values []string
+		for _, v := range cells[1:] {
+			if w := words(trimmed(v)); w != "" {
+				values = append(values, w)
+			}
+		}
+		if key := words(trimmed(bytes.TrimLeft(cells[0], commentMarks))); key != "" {
+			a.takePair(key, values, r.line)
+			return
 		}
 	}
-	if a.lay.sep == ' ' && value != "" {
-		values = []string{value}
+	if key, value := keyValue(r.text, 0); value != "" {
+		a.takePair(key, []string{value}, r.line)
 	}
-	a.takePair(key, values, r.line)
 }
 
 func (a *assembly) takePair(key string, values []string, line int) {
@@ -383,7 +388,7 @@ func (a *assembly) otherSeparator(text []byte) byte {
 		cells := split(text, s.sep, nil)
 		n := 0
 		for _, c := range cells {
-			if sh := shapeOf(c); sh.holds() && sh != markCell {
+			if sh := shapeOf(c); sh.holds() && sh != markCell && sh != clockCell {
 				n++
 			} else if sh == noNumber {
 				n = -len(cells)
@@ -407,7 +412,7 @@ func (a *assembly) frequencyAxis(numeric []bool) error {
 		name := strings.ToLower(h.name)
 		named := strings.HasPrefix(name, "freq") || strings.Contains(name, "frequency") || name == "f" || strings.HasPrefix(name, "frequenz")
 		if (h.q == hertz || named && h.q == unknown) && a.rising(c) {
-			return a.fault(max(a.heads.line, 1), recording.ErrUnsupported, fmt.Sprintf("%s is a frequency: a response or a spectrum, not samples over time", a.title(c)), "export the waveform")
+			return a.fault(a.headLine(), recording.ErrUnsupported, fmt.Sprintf("%s is a frequency: a response or a spectrum, not samples over time", a.title(c)), "export the waveform")
 		}
 		return nil
 	}
@@ -494,7 +499,7 @@ func (a *assembly) timeByOption() error {
 		found = n - 1
 	}
 	if found < 0 || a.role[found] == leftOut {
-		return a.fault(max(a.heads.line, 1), recording.ErrAmbiguous, fmt.Sprintf("no column of numbers is called %q", want), "correct csv.time_column in the job file: a header text or a number from 1")
+		return a.fault(a.headLine(), recording.ErrAmbiguous, fmt.Sprintf("no column of numbers is called %q", want), "correct csv.time_column in the job file: a header text or a number from 1")
 	}
 	a.setTime(found)
 	a.how0 = "csv.time_column of the job"
@@ -564,7 +569,7 @@ func (a *assembly) timeByLook() error {
 		}
 		if again && a.axisLike(c) {
 			if !a.sameAs(c, a.time) {
-				return a.fault(max(a.heads.line, a.lay.line), recording.ErrAmbiguous, fmt.Sprintf("%s and %s are both time and differ", a.title(a.time), a.title(c)), "export the channels on one time axis, or say [takes.NAME.csv] time_column")
+				return a.fault(a.headLine(), recording.ErrAmbiguous, fmt.Sprintf("%s and %s are both time and differ", a.title(a.time), a.title(c)), "export the channels on one time axis, or say [takes.NAME.csv] time_column")
 			}
 			a.role[c] = leftOut
 			a.assume("%s left out: it repeats the time column", a.title(c))
@@ -683,5 +688,3 @@ func channelName(t string) bool {
 	}
 	return channelWord(strings.Fields(strings.NewReplacer("_", " ", "-", " ").Replace(w))[0]) && w != "a"
 }
-
-var _ = bytes.TrimSpace

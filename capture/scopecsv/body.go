@@ -21,6 +21,7 @@ type column struct {
 	glued  int    // how many cells had one
 	bare   int    // how many numbers other than zero had none while others had
 	bareAt int    // line of the first of them
+	start  int    // line of the first number
 	text   int    // line of the first cell of text
 	say    string // that text
 	q      float64
@@ -54,8 +55,7 @@ type body struct {
 	holes    []hole // at most maxLost
 	nHoles   int
 	jumps    []jump // where line number - row changes
-	endLine  int
-	cut      int // line of a last row that was cut off and left out; 0: none
+	cut      int    // line of a last row that was cut off and left out; 0: none
 	footer   []row
 	short    int // line from which rows end early; 0: none
 	shortAt  int // its row
@@ -191,6 +191,9 @@ func (f *file) scan(lay *layout) (*body, error) {
 		line += rowLines
 
 		if len(odds) == 0 && c >= w && !wide {
+			if t.short > 0 {
+				return nil, f.narrowRow(lay, t.short)
+			}
 			open = nil
 			if gapAt > 0 {
 				t.addHole(gapAt)
@@ -202,7 +205,9 @@ func (f *file) scan(lay *layout) (*body, error) {
 			}
 			for c := range t.col {
 				k := &t.col[c]
-				k.count[number]++
+				if k.count[number]++; k.count[number] == 1 {
+					k.start = thisLine
+				}
 				k.last = min(k.last, last[c])
 				k.digits = max(k.digits, digits[c])
 				k.whole = k.whole && last[c] >= 0
@@ -242,7 +247,7 @@ func (f *file) scan(lay *layout) (*body, error) {
 				open = &t.breaches[len(t.breaches)-1]
 			}
 			if len(open.rows) < 64 {
-				open.rows = append(open.rows, row{thisLine, b[rowStart:rowEnd]})
+				open.rows = append(open.rows, row{thisLine, rowStart, b[rowStart:rowEnd]})
 			}
 			continue
 		}
@@ -254,7 +259,7 @@ func (f *file) scan(lay *layout) (*body, error) {
 		}
 		open = nil
 		if t.short > 0 && c >= w && t.short != thisLine {
-			return nil, f.fault(t.short, recording.ErrAmbiguous, fmt.Sprintf("this row has fewer cells than the %d of the others", w), "mend or remove the row: it cannot be told which cell is lost")
+			return nil, f.narrowRow(lay, t.short)
 		}
 		if budget -= w - min(c, w); t.n*w > budget {
 			return nil, f.fault(thisLine, recording.ErrFormat, fmt.Sprintf("most rows have fewer cells than the %d expected", w), "export the samples as a table")
@@ -275,7 +280,9 @@ func (f *file) scan(lay *layout) (*body, error) {
 				k.count[blank]++
 				k.lose(t.n, blank, "blank", thisLine)
 			default:
-				k.count[number]++
+				if k.count[number]++; k.count[number] == 1 {
+					k.start = thisLine
+				}
 				k.last = min(k.last, last[i])
 				k.digits = max(k.digits, digits[i])
 				k.whole = k.whole && last[i] >= 0
@@ -286,11 +293,10 @@ func (f *file) scan(lay *layout) (*body, error) {
 		}
 		t.n++
 	}
-	t.endLine = line
 	for c := range t.col {
 		t.col[c].v = t.col[c].v[:t.n]
 	}
-	f.closeBody(t)
+	f.closeBody(lay, t)
 	return t, nil
 }
 
@@ -350,6 +356,9 @@ func (f *file) storeOdd(k *column, c *cell, n, line int) {
 	k.count[c.kind]++
 	switch c.kind {
 	case number:
+		if k.count[number] == 1 {
+			k.start = line
+		}
 		q, factor := unitOf(c.unit)
 		if c.unit != "" {
 			if p, ok := prefix(c.unit); ok && q != seconds {
@@ -362,7 +371,7 @@ func (f *file) storeOdd(k *column, c *cell, n, line int) {
 				factor = 1
 			}
 			if k.glued == 0 && k.count[number] > 1 {
-				k.bare, k.bareAt = k.count[number]-1, line
+				k.bare, k.bareAt = k.count[number]-1, k.start
 			}
 			k.glued++
 		} else {
@@ -467,15 +476,65 @@ func (t *body) addHole(line int) {
 
 // closeBody takes what stands behind the last sample as a footer, and a
 // single short last row as cut off.
-func (f *file) closeBody(t *body) {
+func (f *file) closeBody(lay *layout, t *body) {
 	if i := len(t.breaches) - 1; i >= 0 && t.breaches[i].at == t.n {
 		t.footer = t.breaches[i].rows
 		t.breaches = t.breaches[:i]
 	}
-	if t.short > 0 && t.shortAt == t.n-1 && t.n > 2 {
+	switch {
+	case t.short > 0 && t.shortAt == t.n-1 && t.n > 2:
 		t.cut = t.short
 		t.dropLast()
+	case t.cut == 0 && t.n > 4 && f.cutNumber(lay, t):
+		t.cut = t.lineOf(t.n - 1)
+		t.dropLast()
 	}
+}
+
+// cutNumber says whether the file ends within a number: no line end behind
+// it, and its last number has fewer decimals or exponent digits than all of up
+// to 64 rows above, which agree.
+func (f *file) cutNumber(lay *layout, t *body) bool {
+	b := f.text
+	if b[len(b)-1] == '\n' || b[len(b)-1] == '\r' {
+		return false
+	}
+	const whole, decimals, exponent = 0, 1, 2
+	tail := func(line []byte) (form, run int) {
+		j := len(line)
+		for j > 0 && line[j-1]-'0' <= 9 {
+			j--
+		}
+		run = len(line) - j
+		switch {
+		case j > 0 && line[j-1] == lay.mark && lay.mark != lay.sep:
+			return decimals, run
+		case j > 1 && (line[j-1] == '+' || line[j-1] == '-') && line[j-2]|0x20 == 'e', j > 0 && line[j-1]|0x20 == 'e':
+			return exponent, run
+		}
+		return whole, run
+	}
+	var lastForm, lastRun, form, run int
+	end := len(b)
+	for i := 0; i < min(65, t.n); i++ {
+		from := end
+		for from > 0 && b[from-1] != '\n' && b[from-1] != '\r' {
+			from--
+		}
+		fm, r := tail(b[from:end])
+		switch {
+		case i == 0:
+			lastForm, lastRun = fm, r
+		case i == 1:
+			form, run = fm, r
+		case fm != form || r != run:
+			return false
+		}
+		for end = from; end > 0 && (b[end-1] == '\n' || b[end-1] == '\r'); {
+			end--
+		}
+	}
+	return form != whole && run > 0 && (lastForm != form || lastRun < run)
 }
 
 // dropLast leaves out the last row.
@@ -496,6 +555,11 @@ func (t *body) dropLast() {
 			}
 		}
 	}
+}
+
+// narrowRow refuses a row with fewer cells than those before and behind it.
+func (f *file) narrowRow(lay *layout, line int) error {
+	return f.fault(line, recording.ErrAmbiguous, fmt.Sprintf("this row has fewer cells than the %d of the others", lay.width), "mend or remove the row: it cannot be told which cell is lost")
 }
 
 // wideRow refuses a row with more cells than the others.

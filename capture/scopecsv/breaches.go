@@ -26,6 +26,15 @@ func (a *assembly) checkBreaches() error {
 			return err
 		}
 	}
+	// Before the samples one such row may be anything; two are samples.
+	var strays []row
+	for _, r := range a.lay.pre {
+		if a.otherSeparator(r.text) != 0 {
+			if strays = append(strays, r); len(strays) == 2 {
+				return a.checkStray(strays[0])
+			}
+		}
+	}
 	return nil
 }
 

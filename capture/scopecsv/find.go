@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"strings"
 
+	"benchslip/capture/num"
 	"benchslip/capture/recording"
 )
 
@@ -39,11 +40,50 @@ func (f *file) find() (*layout, error) {
 	if err != nil {
 		return nil, err
 	}
+	f.findDateOrder(st, rows)
 	lay := &layout{style: st}
 	if err := f.findColumns(lay, rows); err != nil {
 		return nil, err
 	}
 	return lay, f.findStart(lay, p, line)
+}
+
+// findDateOrder settles whether dates with slashes are month/day or day/month:
+// by a figure over 12, else by the order in which the record is shorter.
+func (f *file) findDateOrder(st style, rows []sampled) {
+	var first, last stamp
+	var buf [][]byte
+	over := [2]bool{} // a figure over 12 in the first or second place
+	for _, r := range rows {
+		if bytes.IndexByte(r.text, '/') < 0 && bytes.IndexByte(r.text, '-') < 0 {
+			continue
+		}
+		buf = split(r.text, st.sep, buf)
+		for _, c := range buf {
+			d, ok := readStamp(trimmed(c))
+			if !ok || !d.slashes {
+				continue
+			}
+			over[0] = over[0] || d.m > 12
+			over[1] = over[1] || d.d > 12
+			if !first.hasDate {
+				first = d
+			}
+			last = d
+		}
+	}
+	switch {
+	case over[0] != over[1]:
+		f.monthFirst = over[1]
+	case first.hasDate:
+		span := func(monthFirst bool) int {
+			if d := last.day(monthFirst) - first.day(monthFirst); d >= 0 {
+				return d
+			}
+			return 1 << 30
+		}
+		f.monthFirst = span(true) < span(false)
+	}
 }
 
 // profile is what the cells of a row are.
@@ -64,7 +104,7 @@ func (f *file) findColumns(lay *layout, rows []sampled) error {
 	var buf [][]byte
 	var kinds []kind
 	widths := map[int]int{}
-	type tally struct{ data, rows int }
+	type tally struct{ data, rows, named int }
 	byWidth := map[int][]tally{}
 	for _, r := range rows {
 		buf, kinds = lay.profile(r.text, buf, kinds)
@@ -91,6 +131,9 @@ func (f *file) findColumns(lay *layout, rows []sampled) error {
 			t[c].rows++
 			if k.holds() {
 				t[c].data++
+				if c > 0 && kinds[c-1] == prose && settingWord(words(trimmed(buf[c-1]))) {
+					t[c].named++
+				}
 			}
 		}
 	}
@@ -105,9 +148,22 @@ func (f *file) findColumns(lay *layout, rows []sampled) error {
 	}
 	lay.width = best
 	lay.core = make([]bool, best)
-	lay.first = -1
+	cores := 0
 	for c, t := range byWidth[best] {
-		lay.core[c] = t.data*2 >= t.rows
+		if lay.core[c] = t.data*2 >= t.rows; lay.core[c] {
+			cores++
+		}
+	}
+	for c, t := range byWidth[best] {
+		// In a short table settings may stand beside every row: a value with
+		// its name to the left, before two or more other columns.
+		if c > 0 && lay.core[c] && t.named*2 >= t.rows && cores > 2 {
+			lay.core[c] = false
+			cores--
+		}
+	}
+	lay.first = -1
+	for c := range lay.core {
 		if lay.core[c] && lay.first < 0 {
 			lay.first = c
 		}
@@ -176,6 +232,7 @@ func (f *file) findStart(lay *layout, p, line int) error {
 				}
 				if first && good*2 > seen || seen == 0 {
 					lay.start, lay.line = p, line
+					f.stepBack(lay)
 					if stray > 0 {
 						return f.fault(stray, recording.ErrAmbiguous, "a row of numbers stands alone before the samples", fmt.Sprintf("say how many rows to leave out: [takes.NAME.csv] skip = %d", line-1))
 					}
@@ -184,7 +241,7 @@ func (f *file) findStart(lay *layout, p, line int) error {
 				stray = line
 			}
 			if len(lay.pre) < maxPreamble {
-				lay.pre = append(lay.pre, row{line, text})
+				lay.pre = append(lay.pre, row{line, p, text})
 			}
 		}
 		p = next
@@ -196,6 +253,21 @@ func (f *file) findStart(lay *layout, p, line int) error {
 	return f.fault(0, recording.ErrFormat, "no row of samples was found", "export the samples as a table")
 }
 
+// stepBack takes in rows right before the first row of samples that begin
+// with a number or time in the first column and are as wide, yet hold a bad
+// cell: they are samples too.
+func (f *file) stepBack(lay *layout) {
+	for len(lay.pre) > 0 {
+		r := lay.pre[len(lay.pre)-1]
+		buf, kinds := lay.profile(r.text, nil, nil)
+		if lay.width < 2 || len(buf) != lay.width || kinds[lay.first] != number && kinds[lay.first] != clock {
+			return
+		}
+		lay.pre = lay.pre[:len(lay.pre)-1]
+		lay.start, lay.line = r.pos, r.line
+	}
+}
+
 // filled says whether a row holds more than separators.
 func filled(text []byte) bool { return len(bytes.Trim(text, " \t\x00,;|\"")) > 0 }
 
@@ -204,13 +276,26 @@ const maxPreamble = 4096
 
 // notSamples says what a file without samples seems to be.
 func (f *file) notSamples(lay *layout, rows []sampled) error {
-	pairs := 0
+	pairs, figures, heads := 0, 0, 0
 	for _, r := range rows {
-		if k, v := keyValue(r.text, lay.sep); k != "" && v != "" {
+		k, v := keyValue(r.text, lay.sep)
+		if k != "" && v != "" {
 			pairs++
+			if _, n := num.Scan([]byte(v), lay.mark); n > 0 {
+				figures++
+			}
+			if timeWord(k) || hasUnit(words(r.text)) {
+				heads++
+			}
+		}
+		if i := bytes.IndexAny(r.text, "{["); i > 0 && bytes.IndexAny(r.text[i:], "}]") > 0 && bytes.IndexByte(r.text[i:], ':') > 0 {
+			return f.fault(r.line, recording.ErrFormat, fmt.Sprintf("a cell holds structured text (%q): a summary, not samples", short(words(r.text[i:]))), "export the samples as a table of numbers")
 		}
 	}
-	if pairs*2 > len(rows) {
+	switch {
+	case heads > 0 && len(rows) == heads:
+		return f.fault(rows[0].line, recording.ErrFormat, "a header and no samples", "export it again")
+	case pairs*2 > len(rows) && figures > 0:
 		return f.fault(rows[0].line, recording.ErrFormat, fmt.Sprintf("the file holds settings (%d names with a value) and no samples", pairs), "name the file with the samples; state its rate as "+rateKey)
 	}
 	return f.fault(rows[0].line, recording.ErrFormat, fmt.Sprintf("no table of samples: the file begins with %q", short(words(rows[0].text))), "export the samples as a table of numbers")

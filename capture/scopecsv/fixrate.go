@@ -160,7 +160,7 @@ func agree(x, y figure, slack float64) bool {
 func (a *assembly) rateFromSlope(m timing, slope figure, stated *figure) {
 	rows := fmt.Sprintf("the slope of the time column over %d rows", len(a.stamp))
 	switch {
-	case stated != nil && math.Abs(stated.v-slope.v) <= slope.half+slackRate*1e-3*slope.v:
+	case stated != nil && math.Abs(stated.v-slope.v) <= slope.half+slackRate*1e-3*slope.v && !a.statedIsRounded(m, stated):
 		a.info.RateHz = stated.rate
 		a.assume("rate %s Hz from %q, line %d; %s agrees within its rounding", hz(a.info.RateHz), stated.key, stated.line, rows)
 	default:
@@ -175,6 +175,19 @@ func (a *assembly) rateFromSlope(m timing, slope figure, stated *figure) {
 		}
 		a.flag(recording.RateDoubt, 0, nil, nil, "%q (line %d) says %s a sample, the rows step %s (median %s): the rows are taken", stated.key, stated.line, seconds3(stated.v), seconds3(m.step), seconds3(m.median))
 	}
+}
+
+// statedIsRounded says whether the stated figure looks like a rounded form of
+// the column's own, rounder one: 1.5873e+06 Hz beside steps of 0.63 us.
+func (a *assembly) statedIsRounded(m timing, stated *figure) bool {
+	own := m.rate(len(a.stamp))
+	return math.Abs(1/own-stated.v) <= stated.half*1.01 && own != stated.rate && digitsOf(own) < digitsOf(stated.rate) && digitsOf(own) < digitsOf(stated.v)
+}
+
+// digitsOf is the number of significant digits of the rounder of v and 1/v.
+func digitsOf(v float64) int {
+	n := func(x float64) int { return len(strconv.FormatFloat(rounded(x, 1e-12), 'e', -1, 64)) }
+	return min(n(v), n(1/v))
 }
 
 // rate is the rate of a fitted column of n rows: the roundest figure within
@@ -197,7 +210,7 @@ func (a *assembly) checkThousand(step float64, stated *figure) error {
 	}
 	e := math.Log10(stated.v/step) / 3
 	if k := math.Round(e); k != 0 && math.Abs(e-k) < 0.002 {
-		return a.fault(max(a.heads.line, a.lay.line), recording.ErrAmbiguous,
+		return a.fault(a.headLine(), recording.ErrAmbiguous,
 			fmt.Sprintf("the time column steps %s if it is in s, but %q (line %d) says %s: one has the wrong unit", seconds3(step), stated.key, stated.line, seconds3(stated.v)),
 			`say [takes.NAME.csv] time_unit = "ms" (or "us", "ns"), or the rate`)
 	}

@@ -22,6 +22,7 @@ type layout struct {
 // row is one line of text outside the samples.
 type row struct {
 	line int
+	pos  int // where it begins in the text
 	text []byte
 }
 
@@ -262,6 +263,12 @@ func (f *file) findMark(rows []sampled, st style) (style, error) {
 	default:
 		return st, f.fault(0, recording.ErrFormat, fmt.Sprintf("csv.decimal %q is neither \".\" nor \",\"", f.opt.Decimal), "correct it in the job file")
 	}
+	if f.opt.Separator == "" && st.sep == ',' && dot == 0 && comma == 0 {
+		if r, is := splitDecimals(rows); is {
+			return st, f.fault(r.line, recording.ErrAmbiguous, "cells parted by commas hold whole numbers only, some with leading zeros or after a bare minus: decimal commas, it seems, in a file parted by commas too",
+				`export it with another separator, or say [takes.NAME.csv] separator, decimal`)
+		}
+	}
 	switch {
 	case comma > 0 && dot > 0:
 		r := at[commaed]
@@ -282,4 +289,34 @@ func (f *file) findMark(rows []sampled, st style) (style, error) {
 		st.group = ','
 	}
 	return st, nil
+}
+
+// splitDecimals recognises numbers with decimal commas torn apart by commas
+// as separators: every second cell is unsigned and some begin with a 0 before
+// more digits ("0,05" becomes 0 and 05), or a cell is -0.
+func splitDecimals(rows []sampled) (sampled, bool) {
+	var hint sampled
+	found := false
+	var buf [][]byte
+	for _, r := range rows {
+		buf = split(r.text, ',', buf)
+		whole := len(buf) > 1
+		for i, c := range buf {
+			c = trimmed(c)
+			if shapeOf(c) != plainInt {
+				whole = false
+				break
+			}
+			if i&1 == 1 && (c[0] == '-' || c[0] == '+') {
+				return hint, false
+			}
+			if !found && (i&1 == 1 && len(c) > 1 && c[0] == '0' || string(c) == "-0") {
+				hint, found = r, true
+			}
+		}
+		if whole && len(buf)&1 == 1 {
+			return hint, false
+		}
+	}
+	return hint, found
 }

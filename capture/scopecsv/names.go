@@ -74,6 +74,9 @@ func (f *file) findHeads(lay *layout, numeric []bool) (*heads, error) {
 	}
 	for c := range h.col {
 		if c < len(units) && units[c] != "" && numeric[c] {
+			if !h.named {
+				h.col[c].full, h.col[c].name = units[c], units[c]
+			}
 			if unit, q, fac, ok := unitsCell(units[c]); ok {
 				h.col[c].unit, h.col[c].q, h.col[c].f, h.col[c].from = unit, q, fac, fmt.Sprintf("the units row, line %d", lay.pre[unitsLine].line)
 			}
@@ -247,14 +250,12 @@ func (f *file) isNames(lay *layout, cells []string, numeric []bool, units, marke
 	if filled == 0 || marker && !known {
 		return false
 	}
-	if units {
-		return true
-	}
 	// "Vertical Units,V" before two columns is a setting, not a header; and so
 	// is a setting whose name is known.
 	if filled == 2 {
 		_, _, _, a := unitsCell(over[0])
 		_, _, _, b := unitsCell(over[1])
+		b = b && !units
 		if b && !a && !timeWord(over[0]) || settingWord(over[0]) && !timeWord(over[0]) && !indexWord(over[0]) && over[0] != "Source" {
 			return false
 		}

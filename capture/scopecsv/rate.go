@@ -21,6 +21,7 @@ type timing struct {
 	rms      float64
 	worstAt  int
 	even     bool // all stamps lie on the line within their rounding
+	single   bool // stamps are 32-bit floats printed with more digits
 	usable   bool // near enough to the line that the slope is a sample rate
 }
 
@@ -57,26 +58,31 @@ func rounding(last, digits int) func(t float64) float64 {
 // stamp is missing). unit is the rounding of a stamp.
 func measureTime(t []float64, unit func(float64) float64) timing {
 	var m timing
-	n := len(t)
-	if n < 2 {
+	if len(t) < 2 {
 		return m
 	}
 	lo, hi := math.Inf(1), math.Inf(-1)
 	for _, v := range t {
 		lo, hi = math.Min(lo, v), math.Max(hi, v)
 	}
+	far := math.Max(math.Abs(lo), math.Abs(hi))
 	m.q = math.Max(unit(lo), unit(hi))
-	single := isSingle(t, m.q)
-	if single {
-		m.q = math.Max(m.q, 1.2e-7*math.Max(math.Abs(lo), math.Abs(hi)))
+	if m.single = isSingle(t, m.q); m.single {
+		m.q = math.Max(m.q, 1.2e-7*far)
 	}
-	// double rounding of the stamps themselves
-	m.q = math.Max(m.q, 4.5e-16*math.Max(math.Abs(lo), math.Abs(hi)))
+	m.q = math.Max(m.q, 4.5e-16*far) // float64's own
 
-	steps := make([]float64, 0, n-1)
-	for i := 1; i < n; i++ {
+	steps := make([]float64, 0, len(t)-1)
+	zeros, least := 0, math.Inf(1)
+	for i := 1; i < len(t); i++ {
 		if d := t[i] - t[i-1]; d == d {
 			steps = append(steps, d)
+			switch {
+			case d == 0:
+				zeros++
+			case d > 0:
+				least = math.Min(least, d)
+			}
 		}
 	}
 	if len(steps) == 0 {
@@ -85,42 +91,97 @@ func measureTime(t []float64, unit func(float64) float64) timing {
 	sorted := append([]float64(nil), steps...)
 	sort.Float64s(sorted)
 	m.median = (sorted[(len(sorted)-1)/2] + sorted[len(sorted)/2]) / 2
-
-	// A first step from the steps that are no gaps: their mean is right where
-	// the median is spoiled by rounding.
-	sum, k := 0.0, 0
-	for _, d := range sorted {
-		if d >= -m.q && d <= 1.5*math.Max(m.median, 0)+1.01*m.q {
-			sum += d
-			k++
+	if zeros*4 >= len(steps) && zeros < len(steps) && !pairs(t, zeros) {
+		m.q = math.Max(m.q, least*(1-1e-9)) // stamps are coarser than their digits
+	}
+	low, high := m.normal(steps)
+	for i := 1; i < len(t); i++ {
+		switch d := t[i] - t[i-1]; {
+		case d == 0:
+			if m.repeats++; m.repeatAt == 0 {
+				m.repeatAt = i
+			}
+			if low > 0 {
+				m.breaks = append(m.breaks, i)
+			}
+		case d > high, d < low:
+			m.breaks = append(m.breaks, i)
 		}
 	}
-	if k == 0 || sum <= 0 {
+	if m.step = m.fit(t); !(m.step > 0) {
+		m.step = 0
 		return m
 	}
-	step := sum / float64(k)
-	for range 2 {
-		m.breaks = m.breaks[:0]
-		m.repeats, m.repeatAt = 0, 0
-		for i := 1; i < n; i++ {
-			d := t[i] - t[i-1]
-			switch {
-			case d > 1.5*step+1.01*m.q, d < -1.01*m.q:
-				m.breaks = append(m.breaks, i)
-			case d == 0:
-				if m.repeats++; m.repeatAt == 0 {
-					m.repeatAt = i
-				}
-			}
-		}
-		step = m.fit(t)
-		if !(step > 0) {
-			return m
+	m.residuals(t, unit)
+	return m
+}
+
+// pairs says whether every stamp stands exactly twice.
+func pairs(t []float64, zeros int) bool {
+	if d := 2*zeros - len(t); d < -2 || d > 2 {
+		return false
+	}
+	first := 0
+	if len(t) > 2 && t[1] != t[0] {
+		first = 1
+	}
+	for i := first; i+1 < len(t); i += 2 {
+		if t[i] != t[i+1] {
+			return false
 		}
 	}
-	m.step = step
-	m.residuals(t, unit, single)
-	return m
+	return true
+}
+
+// normal returns the range of steps that are no break. A step over 1.5
+// medians is a gap, one of zero a repeat, one below zero a restart. Where the
+// stamps are so coarse that rounding makes steps of k and k+1 of their last
+// digit, both are normal: when each is frequent, or when the rare ones stand
+// evenly spaced as the rounding of an even time base places them (a Sturmian
+// sequence: the distances between them are two neighbouring whole numbers).
+func (m *timing) normal(steps []float64) (low, high float64) {
+	q := m.q
+	if q < 0.2*m.median {
+		return 0.5 * q, 1.5*m.median + q
+	}
+	count := map[int]int{}
+	tick := func(d float64) int { return int(math.Round(math.Max(-1e6, math.Min(1e6, d/q)))) }
+	for _, d := range steps {
+		count[tick(d)]++
+	}
+	usual := 0
+	for k, n := range count {
+		if n > count[usual] || n == count[usual] && k < usual {
+			usual = k
+		}
+	}
+	lowest, highest := usual, usual
+	for _, k := range []int{usual - 1, usual + 1} {
+		if n := count[k]; k >= 0 && n > 0 && (n*20 >= len(steps) && (k > usual || count[usual+1] < n) || n >= 3 && evenlySpaced(steps, k, tick)) {
+			lowest, highest = min(lowest, k), max(highest, k)
+		}
+	}
+	high = math.Max((float64(highest)+0.5)*q, 1.5*m.median)
+	if lowest == 0 {
+		return -0.5 * q, high
+	}
+	return 0.5 * q, high
+}
+
+// evenlySpaced says whether the steps of k ticks stand at distances that
+// differ by at most one.
+func evenlySpaced(steps []float64, k int, tick func(float64) int) bool {
+	last, least, most := -1, len(steps), 0
+	for i, d := range steps {
+		if tick(d) != k {
+			continue
+		}
+		if last >= 0 {
+			least, most = min(least, i-last), max(most, i-last)
+		}
+		last = i
+	}
+	return most-least <= 1
 }
 
 // fit is the common slope of time on row of all stretches between breaks, by
@@ -163,10 +224,11 @@ func (m *timing) fit(t []float64) float64 {
 }
 
 // residuals compares each stamp with its stretch's line. A stamp is even when
-// it lies within its rounding (a full unit: some exporters cut digits instead
-// of rounding them) plus 1e-4 of a step.
-func (m *timing) residuals(t []float64, unit func(float64) float64, single bool) {
+// it lies within 0.75 of a unit (rounding or cutting digits both leave half a
+// unit about the mean line) plus 1e-4 of a step.
+func (m *timing) residuals(t []float64, unit func(float64) float64) {
 	m.even, m.usable = true, true
+	coarse := m.repeats > 0 && m.q > 0.2*m.step
 	sum, count := 0.0, 0
 	from := 0
 	for b := 0; b <= len(m.breaks); b++ {
@@ -194,14 +256,17 @@ func (m *timing) residuals(t []float64, unit func(float64) float64, single bool)
 			if r > m.worst {
 				m.worst, m.worstAt = r, i
 			}
-			tol := 0.75 * unit(t[i])
-			if single {
-				tol = math.Max(tol, 1e-7*math.Abs(t[i]))
+			q := unit(t[i])
+			if m.single {
+				q = math.Max(q, 1.2e-7*math.Abs(t[i]))
 			}
-			if r > tol+1e-4*m.step+4.5e-16*math.Abs(t[i]) {
+			if coarse {
+				q = math.Max(q, m.q)
+			}
+			if r > 0.75*q+1e-4*m.step+4.5e-16*math.Abs(t[i]) {
 				m.even = false
 			}
-			if r > 0.5*m.step+unit(t[i]) {
+			if r > 0.5*m.step+q {
 				m.usable = false
 			}
 		}

@@ -35,7 +35,7 @@ func (a *assembly) readTime() error {
 	case h.q == seconds:
 		f, from = h.f, h.from
 	case h.q != unknown:
-		return a.fault(max(a.heads.line, 1), recording.ErrAmbiguous, fmt.Sprintf("the unit %q of %s is no unit of time", h.unit, a.title(a.time)), `say [takes.NAME.csv] time_unit = "ms"`)
+		return a.fault(a.headLine(), recording.ErrAmbiguous, fmt.Sprintf("the unit %q of %s is no unit of time", h.unit, a.title(a.time)), `say [takes.NAME.csv] time_unit = "ms"`)
 	case a.set.timeUnit.text != "":
 		f, from = a.set.timeUnit.v, fmt.Sprintf("%q, line %d", a.set.timeUnit.key, a.set.timeUnit.line)
 	}

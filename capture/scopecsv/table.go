@@ -87,6 +87,14 @@ func (f *file) assemble(lay *layout, t *body, size int64) (*table, error) {
 	return &table{info: a.info, columns: a.out}, nil
 }
 
+// headLine is the line that messages about a column's header name.
+func (a *assembly) headLine() int {
+	if a.heads.line > 0 {
+		return a.heads.line
+	}
+	return a.lay.line
+}
+
 // title is how messages name a column.
 func (a *assembly) title(c int) string {
 	if n := a.heads.col[c].full; n != "" {
