@@ -31,7 +31,7 @@ func newChannel(in *recording.Info, c int) *channel {
 	}
 	ch.codes = newCodes(ch.bits)
 	ch.match = newMatcher()
-	ch.zeros.limit = max(maxLag, int64(maxGap*in.RateHz))
+	ch.zeros.limit = max(maxLag, int64(maxPause*in.RateHz))
 	ch.zeros.step = in.Channels[c].Step
 	return ch
 }
@@ -41,14 +41,19 @@ func (ch *channel) feed(w []float64, at int64) {
 	x := w[history:]
 	m := momentsOf(x)
 	ch.all.join(m)
-	ch.top.feed(x, at, m.max)
-	ch.bottom.feed(x, at, -m.min)
+	still := m.min == m.max && m.n == int64(len(x))
+	ch.top.feed(x, at, m.max, still)
+	ch.bottom.feed(x, at, -m.min, still)
 	if ch.fs && ch.bits == 0 {
-		ch.one.feed(x, at, m.max)
-		ch.minus.feed(x, at, -m.min)
+		ch.one.feed(x, at, m.max, still)
+		ch.minus.feed(x, at, -m.min, still)
 	}
-	ch.codes.feed(x)
-	ch.match.feed(w, at)
+	if still {
+		ch.codes.feed(x[:1])
+	} else {
+		ch.codes.feed(x)
+	}
+	ch.match.feed(w, at, still)
 	if ch.fs {
 		ch.zeros.feed(x, at, m.min, m.max)
 	}
@@ -164,7 +169,7 @@ func silentFlag(in *recording.Info, c int, ch *channel) *recording.Flag {
 	}
 	f := &recording.Flag{Code: recording.Silent, Channel: c + 1}
 	f.FromS, f.ToS = place(in, 0, in.Frames)
-	f.Message = fmt.Sprintf("all %d samples are %g %s", ch.all.n, ch.all.min, in.Channels[c].Unit)
+	f.Message = fmt.Sprintf("all %d samples are %g %s", ch.all.n, ch.all.min+0, in.Channels[c].Unit)
 	return f
 }
 

@@ -13,8 +13,7 @@ const MaxCodes = 4096
 type codes struct {
 	table []uint64 // open hash of the bit patterns + 1 seen; 0: empty
 	n     int
-	full  bool   // more than MaxCodes
-	last  uint64 // pattern of the sample before
+	full  bool // more than MaxCodes
 
 	grid   bool   // all samples so far are multiples of 2^-31
 	or     uint32 // all samples as 32-bit codes, or'ed
@@ -22,7 +21,7 @@ type codes struct {
 }
 
 func newCodes(validBits int) codes {
-	c := codes{table: make([]uint64, 2*MaxCodes), grid: true, last: math.Float64bits(math.NaN())}
+	c := codes{table: make([]uint64, 2*MaxCodes), grid: true}
 	if validBits > 0 && validBits <= 32 {
 		c.enough = 1 << (32 - validBits)
 	} else {
@@ -40,10 +39,9 @@ func (c *codes) feed(x []float64) {
 	}
 	for _, v := range x {
 		u := math.Float64bits(v + 0) // -0 becomes +0
-		if u == c.last || v-v != 0 {
+		if v-v != 0 {
 			continue
 		}
-		c.last = u
 		if c.put(u); c.full {
 			c.table = nil
 			return

@@ -96,7 +96,7 @@ func fewCodesFlag(g again, c int, ch *channel) (*recording.Flag, error) {
 	if ch.codes.full || ch.codes.n < 3 || ch.codes.n > 2*fewSteps || step <= 0 {
 		return nil, nil
 	}
-	fit, _, ok, err := g.sineAt(c, ch.top.first)
+	fit, x, ok, err := g.sineAt(c, ch.top.first)
 	if err != nil || !ok {
 		return nil, err
 	}
@@ -106,6 +106,13 @@ func fewCodesFlag(g again, c int, ch *channel) (*recording.Flag, error) {
 	}
 	if ch.fs && fit.peak < leastTone || !ch.fs && steps < leastSteps {
 		return nil, nil
+	}
+	// Spacings wider than the format's own step: where few values come from few
+	// phases (a triangle in step with the sample rate) they are no steps.
+	if step > 1.5*g.in.Channels[c].Step {
+		if p := innerPeriod(x[:min(len(x), fitPoints)]); p > 0 && p <= 2*ch.codes.n {
+			return nil, nil
+		}
 	}
 	f := &recording.Flag{Code: recording.FewCodes, Channel: c + 1}
 	f.FromS, f.ToS = place(g.in, 0, g.in.Frames)

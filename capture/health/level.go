@@ -29,7 +29,7 @@ type moments struct {
 	min, max float64
 }
 
-// of takes the moments of one cell: two passes, so that a large mean costs no
+// momentsOf takes the moments of one cell: two passes, so that a large mean costs no
 // digits. Values that are not finite are left out.
 func momentsOf(x []float64) moments {
 	m := moments{min: math.Inf(1), max: math.Inf(-1)}
@@ -43,20 +43,27 @@ func momentsOf(x []float64) moments {
 		s1 += b
 		s2 += c
 		s3 += d
-		if a > b {
-			a, b = b, a
-		}
-		if c > d {
-			c, d = d, c
-		}
+		// New extremes are rare, so these branches cost next to nothing.
 		if a < lo {
 			lo = a
+		}
+		if b < lo {
+			lo = b
 		}
 		if c < lo {
 			lo = c
 		}
+		if d < lo {
+			lo = d
+		}
+		if a > hi {
+			hi = a
+		}
 		if b > hi {
 			hi = b
+		}
+		if c > hi {
+			hi = c
 		}
 		if d > hi {
 			hi = d

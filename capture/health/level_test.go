@@ -121,10 +121,14 @@ func TestBitsInUse(t *testing.T) {
 func TestBlockSize(t *testing.T) {
 	x := sum(sample(48000, 2, sine(1.2, 80, 0)), noise(96000, 0.01, 3))
 	y := sum(sample(48000, 2, sine(0.2, 480, 0)), noise(96000, 0.01, 4))
-	rec := audio(48000, 16, x, y, x)
+	z := put(insert(y, 30000, y[29000:30000]...), 60000, make([]float64, 500)...)
+	rec := audio(48000, 16, x, y, x, z)
 	want, err := scan(rec, cell)
 	if err != nil {
 		t.Fatal(err)
+	}
+	if got := codesOf(want); got != "clipped 1, clipped 3, repeated-block 4, gap 4, identical-channels 3" {
+		t.Errorf("flags %q", got)
 	}
 	for _, block := range []int{2 * cell, 3 * cell, 64 * cell} {
 		got, err := scan(rec, block)

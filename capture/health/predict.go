@@ -18,7 +18,6 @@ type predictor struct {
 	errs   []float64      // |error| of x[order:], in order
 	median float64        // of errs
 	max    float64
-	power  float64 // mean square
 }
 
 // fitPredictor needs at least 4*order samples, all finite.
@@ -90,16 +89,13 @@ func (p *predictor) fit(x []float64, limit float64) {
 		}
 		p.coef[j] = v / r[j][j]
 	}
-	p.max, p.power = 0, 0
+	p.max = 0
 	for i := order; i < len(x); i++ {
 		e := math.Abs(x[i] - p.next(x[:i]))
 		p.errs[i-order] = e
 		p.max = max(p.max, e)
-		p.power += e * e / float64(len(p.errs))
 	}
-	sorted := slices.Clone(p.errs)
-	slices.Sort(sorted)
-	p.median = sorted[len(sorted)/2]
+	p.median = median(p.errs)
 }
 
 // next predicts the sample after x.
@@ -111,22 +107,32 @@ func (p *predictor) next(x []float64) float64 {
 	return v
 }
 
-// noisy says whether the samples hold more noise than rounding to step
-// leaves (0: none known; then more than a float32 leaves): such samples never
-// repeat by themselves.
+// noisy says whether x, predicted with errors errs, holds more noise than
+// rounding to step leaves (0: none known; then more than a float32 leaves):
+// such samples never repeat by themselves.
 //
 // Rounding alone leaves a median error of about step/4, white noise of
 // 0.75 steps RMS one of step/2. Less noise than that still counts when
 // prediction gains less than 6 dB: on any tone it gains more.
-func (p *predictor) noisy(step float64) bool {
-	return p.median > step/2 && p.median > 1e-6*p.rms || p.power > p.rms*p.rms/4
+func noisy(errs, x []float64, step float64) bool {
+	if len(errs) == 0 {
+		return false
+	}
+	m := momentsOf(x)
+	power := 0.0
+	for _, e := range errs {
+		power += e * e
+	}
+	mid := median(errs)
+	return mid > step/2 && mid > 1e-6*max(-m.min, m.max) || power/float64(len(errs)) > m.m2/float64(m.n)/4
 }
 
-// tail is the RMS of the last n errors, over the RMS of all.
-func (p *predictor) tail(n int) float64 {
-	end := 0.0
-	for _, e := range p.errs[len(p.errs)-n:] {
-		end += e * e
-	}
-	return math.Sqrt(end / float64(n) / p.power)
+// median is the upper one of an even number.
+func median(x []float64) float64 {
+	s := slices.Clone(x)
+	slices.Sort(s)
+	return s[len(s)/2]
 }
+
+// tail is the median of the last n errors over that of all.
+func (p *predictor) tail(n int) float64 { return median(p.errs[len(p.errs)-n:]) / p.median }

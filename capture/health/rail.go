@@ -40,16 +40,26 @@ func fixedRail(sign, value float64) rail {
 }
 
 // feed takes a cell that starts at frame at and whose largest sign * sample
-// is top.
-func (r *rail) feed(x []float64, at int64, top float64) {
+// is top; still: all samples are present and equal.
+func (r *rail) feed(x []float64, at int64, top float64, still bool) {
 	if top > r.value && !r.fixed {
 		*r = rail{sign: r.sign, value: top, first: -1}
 	}
-	if top < r.value || math.IsInf(top, -1) {
+	if top < r.value || still && top != r.value || math.IsInf(top, -1) {
 		r.end()
 		return
 	}
 	want := r.sign * r.value
+	if still {
+		if r.n == 0 {
+			r.open = at
+			if r.first < 0 {
+				r.first = at
+			}
+		}
+		r.n += int64(len(x))
+		return
+	}
 	for i, v := range x {
 		if v != want {
 			if r.n > 0 {

@@ -8,14 +8,18 @@ import (
 	"benchslip/capture/recording"
 )
 
+// minStale is the length in frames from which a block counts that came before
+// but does not follow itself.
+const minStale = 256
+
 // repeats judges the matches of a channel. A periodic signal repeats by
-// itself; what is flagged is one of these:
+// itself, and a nearly periodic one in coarse steps does so here and there.
+// A match is flagged when it begins and ends abruptly - around it, at the
+// same lag, most samples differ - and one of these holds:
 //
-//   - the prediction that holds inside the block breaks where the copy
+//   - the prediction that is good inside the block breaks where the copy
 //     starts: the signal jumps there as it does nowhere else;
-//   - the block holds noise beyond rounding, which never repeats. When the
-//     match is longer than the lag (a block stuck, or a periodic stimulus
-//     that was never analogue), equality must also start abruptly.
+//   - the block holds noise beyond rounding, which never repeats.
 //
 // Not flagged: blocks with an inner period that divides the lag, and what is a
 // periodic stimulus rather: matches between silences or the ends of the
@@ -38,60 +42,99 @@ func repeats(g again, ch *channel) ([]event, error) {
 
 func badRepeat(g again, c int, m match, step float64) (bool, error) {
 	const context = 1024
+	lag, long := int(m.lag), m.to-m.from
+	if long < m.lag && long < minStale {
+		return false, nil
+	}
 	x, start, err := g.stretch(c, m.from-m.lag-context, m.from+4)
 	if err != nil {
 		return false, err
 	}
-	a := int(m.from - start) // where the copy starts in x
-	if a < int(m.lag) || a > len(x) {
-		return false, nil
-	}
-	after, _, err := g.stretch(c, m.to, m.to+window)
+	after, _, err := g.stretch(c, m.to-m.lag, m.to+2*window)
 	if err != nil {
 		return false, err
 	}
-	block := x[a-int(m.lag) : a]
-	if p := innerPeriod(block); p > 0 && len(block)%p == 0 {
+	a := int(m.from - start) // where the copy starts in x
+	if a < lag || a > len(x) || len(after) < lag {
 		return false, nil
 	}
-	before := x[max(0, a-int(m.lag)-window) : a-int(m.lag)]
-	if still(before) && (still(after) || m.to-m.from >= 2*m.lag) {
+	if step == 0 { // decimal digits have one, float samples next to none
+		step = leastStep(x)
+	}
+	if !differs(x[max(lag, a-2*window)-lag:a], lag, step) || !differs(after, lag, step) {
+		return false, nil
+	}
+	before := x[max(0, a-lag-window) : a-lag]
+	if still(before) && (still(after[lag:]) || long >= 2*m.lag) {
+		return false, nil
+	}
+	if p := innerPeriod(x[a-lag : a]); p > 0 && lag%p == 0 {
 		return false, nil
 	}
 
-	fitFrom := max(0, a-max(int(m.lag)+2*order, context))
-	p, ok := fitPredictor(x[fitFrom:a])
+	if long >= m.lag {
+		// The block follows itself: is there a break between the two?
+		p, ok := fitPredictor(x[max(0, a-max(lag+2*order, context)):a])
+		if ok {
+			jump := 0.0
+			for i := a; i < len(x); i++ {
+				jump = max(jump, math.Abs(x[i]-p.next(x[:i])))
+			}
+			if jump > 4*p.max && jump > 4*step {
+				return true, nil
+			}
+		}
+	}
+	// Is what came twice noise? A short block is modelled with what lies
+	// before it.
+	n := int(min(long, m.lag))
+	end := a - lag + n
+	p, ok := fitPredictor(x[max(0, end-max(n, 256)):end])
 	if !ok {
-		p, ok = fitPredictor(block)
-		if !ok {
+		if p, ok = fitPredictor(x[end-n : end]); !ok {
 			return false, nil
 		}
 	}
-	full := m.to-m.from >= m.lag // as long as the lag: the block follows itself
-	jump := 0.0
-	for i := a; i < len(x); i++ {
-		jump = max(jump, math.Abs(x[i]-p.next(x[:i])))
+	original := x[end-n : end]
+	return variety(original, 4) && noisy(p.errs[max(0, len(p.errs)-n):], original, step), nil
+}
+
+// variety says whether x holds at least n different values.
+func variety(x []float64, n int) bool {
+	var seen []float64
+	for _, v := range x {
+		if !slices.Contains(seen, v) {
+			if seen = append(seen, v); len(seen) >= n {
+				return true
+			}
+		}
 	}
-	if full && jump > 4*p.max && jump > 4*step {
-		return true, nil
+	return false
+}
+
+// differs says whether the samples from x[lag] on are others than those lag
+// before: at least half differ by more than half a step (or what a float32
+// rounds), and not by one step to one side only, as a signal does that just
+// fails to repeat. True also where there are too few samples to say.
+func differs(x []float64, lag int, step float64) bool {
+	all := len(x) - lag
+	if all < window {
+		return true
 	}
-	if !p.noisy(step) {
-		return false, nil
+	up, down, far := 0, 0, 0
+	for i := lag; i < len(x); i++ {
+		d := x[i] - x[i-lag]
+		tiny := max(step/2, 1e-6*math.Abs(x[i]))
+		if d > tiny {
+			up++
+		} else if d < -tiny {
+			down++
+		}
+		if math.Abs(d) > 3*tiny {
+			far++
+		}
 	}
-	if m.to-m.from < 2*m.lag {
-		return true, nil
-	}
-	// A long match: was the signal a different one before it?
-	var d []float64
-	for i := max(a-64, int(m.lag)); i < a; i++ {
-		d = append(d, math.Abs(x[i]-x[i-int(m.lag)]))
-	}
-	if len(d) < window {
-		return false, nil
-	}
-	slices.Sort(d)
-	mid := d[len(d)/2]
-	return mid > 4*step && mid > 1e-6*p.rms, nil
+	return 2*far >= all || 2*(up+down) >= all && 8*min(up, down) >= all
 }
 
 // still says that samples end there or stand still.

@@ -87,18 +87,19 @@ func scan(rec recording.Recording, block int) (*Report, error) {
 		at += int64(n)
 	}
 
-	r := &Report{}
 	for _, ch := range chans {
 		ch.close(in.Frames)
-		r.Levels = append(r.Levels, ch.level())
-		r.clips = append(r.clips, ch.clips())
 	}
-	for c, ch := range chans {
-		r.add(clippedFlag(in, c, ch))
-	}
-	g := again{rec, in}
+	return report(again{rec, in}, chans, same)
+}
+
+// report draws up the levels and flags when all frames are through.
+func report(g again, chans []*channel, same *twins) (*Report, error) {
+	r := &Report{}
 	var events []event
 	for _, ch := range chans {
+		r.Levels = append(r.Levels, ch.level())
+		r.clips = append(r.clips, ch.clips())
 		for _, look := range []func(again, *channel) ([]event, error){repeats, gaps} {
 			e, err := look(g, ch)
 			if err != nil {
@@ -107,7 +108,9 @@ func scan(rec recording.Recording, block int) (*Report, error) {
 			events = append(events, e...)
 		}
 	}
-	r.Flags = append(r.Flags, eventFlags(in, events)...)
+	for c, ch := range chans {
+		r.add(clippedFlag(g.in, c, ch))
+	}
 	for _, look := range []func(again, int, *channel) (*recording.Flag, error){flatTopFlag, fewCodesFlag} {
 		for c, ch := range chans {
 			f, err := look(g, c, ch)
@@ -117,11 +120,12 @@ func scan(rec recording.Recording, block int) (*Report, error) {
 			r.add(f)
 		}
 	}
+	r.Flags = append(r.Flags, eventFlags(g.in, events)...)
 	for c, ch := range chans {
-		r.add(silentFlag(in, c, ch))
+		r.add(silentFlag(g.in, c, ch))
 	}
 	for c, ch := range chans {
-		r.add(twinFlag(in, c, ch, same))
+		r.add(twinFlag(g.in, c, ch, same))
 	}
 	return r, nil
 }

@@ -6,6 +6,7 @@ import "math"
 type sineFit struct {
 	peak  float64 // > 0, unit of the samples
 	omega float64 // rad a sample
+	phase float64 // of the cosine at the first sample, rad
 	share float64 // of the AC power of the stretch, 0..1
 	rest  float64 // RMS of what is left
 }
@@ -24,6 +25,10 @@ func fitSine(x []float64) (sineFit, bool) {
 	period, ok := crossingPeriod(x)
 	if !ok {
 		return sineFit{}, false
+	}
+	// Whole periods: the share of a part of one would depend on which part.
+	if whole := int(math.Floor(float64(len(x))/period) * period); whole >= 4 {
+		x = x[:whole]
 	}
 	thin := 1
 	for len(x)/thin > fitPoints && period/float64(thin) > 64 {
@@ -91,6 +96,7 @@ func fitSine(x []float64) (sineFit, bool) {
 	return sineFit{
 		peak:  math.Hypot(p[0], p[1]),
 		omega: w / float64(thin),
+		phase: math.Atan2(-p[1], p[0]) - w*mid,
 		share: 1 - left/all.m2,
 		rest:  math.Sqrt(left / float64(all.n)),
 	}, true

@@ -354,6 +354,8 @@ func gapPairs() []pair {
 			one(audio(fs, 16, cat(quiet, x, quiet)), audio(fs, 16, noise(fs, 1e-5, 1)), audio(fs, 16, half))},
 		{"85 ms in both channels", audio(fs, 24, zero(x, 20000, 4096), zero(y, 20000, 4096)), "gap 0", 20000,
 			one(audio(fs, 24, cat(quiet, fade(toneOf(9600)), quiet, fade(toneOf(9600)), quiet)))},
+		{"200 ms, the tone going on behind them", audio(fs, 24, zero(x, 20000, 9600)), "gap 1", 20000,
+			one(audio(fs, 24, insert(x, 20000, constant(9613, 0)...)), audio(fs, 24, zero(x, 20000, 13000)), audio(fs, 24, cat(x[:20000], quiet[:9600], x[:9600])))},
 		{"one channel of two", audio(fs, 24, x, zero(y, 20000, 1024)), "gap 2", 20000,
 			one(audio(fs, 24, x, cat(quiet, fade(y[:9600]), quiet, y[:14400])))},
 		{"float music", audio(fs, 0, zero(music(fs, 0.5, 4), 20000, 512)), "gap 1", 20000,
