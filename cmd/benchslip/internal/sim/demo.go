@@ -72,7 +72,7 @@ func free(path string, text []byte) error {
 
 // The demo's conditions of each take.
 const (
-	floorS, toneS, commonS, noiseS, cableS, scopeS = 6, 4, 4, 8, 10, 2
+	floorS, toneS, commonS, noiseS, cableS, scopeS = 4, 3, 2.5, 6, 8, 2
 	testHz                                         = 1042
 )
 

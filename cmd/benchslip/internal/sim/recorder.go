@@ -17,6 +17,7 @@ type Recorder struct {
 	FullScalePeak float64   // V at digital full scale
 	Match         []float64 // relative gain error of each channel; nil: none
 	NoiseDensity  float64   // of each input, V/rtHz
+	Leak          float64   // what each input hears of the sum of the others, V/V
 	LowCutHz      float64   // one-pole high-pass of the input; 0: DC-coupled
 
 	// The crystal runs fast by PPM + WanderPPM sin(2 pi t/WanderS), 1e-6.
@@ -63,7 +64,10 @@ func (r Recorder) Samples(seconds float64, channels ...Source) [][]float64 {
 		x := make([]float64, len(g.T))
 		source.Add(x, g)
 		lowCut(x, r.LowCutHz, float64(r.RateHz))
-		x = x[ahead:]
+		out[c] = x[ahead:]
+	}
+	r.leak(out)
+	for c, x := range out {
 		Noise{Density: r.NoiseDensity, Seed: r.Seed ^ uint64(c+1)<<32}.Add(x, &Grid{RateHz: g.RateHz, T: g.T[ahead:]})
 		scale := 1 / r.FullScalePeak
 		if c < len(r.Match) {
@@ -73,9 +77,24 @@ func (r Recorder) Samples(seconds float64, channels ...Source) [][]float64 {
 			x[i] *= scale
 		}
 		r.convert(x, uint64(c))
-		out[c] = x
 	}
 	return out
+}
+
+// leak adds to each channel what it hears of the others.
+func (r Recorder) leak(x [][]float64) {
+	if r.Leak == 0 || len(x) < 2 {
+		return
+	}
+	for i := range x[0] {
+		var sum float64
+		for _, ch := range x {
+			sum += ch[i]
+		}
+		for _, ch := range x {
+			ch[i] += r.Leak * (sum - ch[i])
+		}
+	}
 }
 
 // lowCut is an AC-coupled input, a one-pole high-pass: in place,

@@ -90,6 +90,13 @@ func TestInputNoiseAndMatch(t *testing.T) {
 	within(t, "correlation of the channels", both, 0, 4/math.Sqrt(float64(len(x[0]))))
 }
 
+func TestLeak(t *testing.T) {
+	r := Recorder{RateHz: 48000, Bits: 32, FullScalePeak: 1, Leak: 1e-3, Undithered: true}
+	x := r.Samples(0.5, DC(0), Tone{FreqHz: 1000, RMS: 0.5})
+	near(t, "heard", rms(x[0]), 0.5e-3, 1e-4)
+	near(t, "driven", rms(x[1]), 0.5, 1e-4)
+}
+
 // TestWAVHoldsTheSamples reads a recording back and compares every code.
 func TestWAVHoldsTheSamples(t *testing.T) {
 	r := Recorder{RateHz: 44100, Bits: 24, FullScalePeak: 2, NoiseDensity: 1e-7, Seed: 4}

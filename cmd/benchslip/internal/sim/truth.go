@@ -50,7 +50,6 @@ func Truths() []Truth {
 	add("preamp", "Output noise", dBu(noise), "dBu")
 	add("preamp", "Output noise, A-weighted", dBu(bandRMS(quiet, hum, 20, 20e3, aWeight)), "dBu")
 	add("preamp", "Noise density at 1 kHz", quiet.At(1000), "V/rtHz")
-	add("preamp", "Equivalent input noise", dBu(noise/cmplx.Abs(gain)), "dBu")
 	add("preamp", "Hum at the output", dBu(hum.Total()), "dBu")
 	add("preamp", "Hum against noise", decibel(hum.Total()/quiet.BandRMS(20, 20e3)), "dB")
 
