@@ -13,6 +13,7 @@ import (
 
 	"benchslip/analyze"
 	"benchslip/analyze/internal/budget"
+	"benchslip/analyze/internal/spectrum"
 	"benchslip/analyze/stage"
 	"benchslip/capture/recording"
 	"benchslip/capture/unit"
@@ -46,6 +47,9 @@ func lines(p *analyze.Pass, s *analyze.Signal, orders int) (*stage.Lines, *analy
 			Advice: fmt.Sprintf("record %.3g s or more", math.Max(10, 10/nominal))}
 	}
 	tone, _ := stage.FindTone(p, 0, s)
+	if tone != nil && ofComb(p, s, tone) {
+		tone = nil
+	}
 	l := stage.Decompose(p, s, stage.Options{Tone: tone, Mains: orders})
 	if len(l.Mains) == 0 {
 		return nil, &analyze.Refusal{Code: analyze.TooShort,
@@ -58,6 +62,23 @@ func lines(p *analyze.Pass, s *analyze.Signal, orders int) (*stage.Lines, *analy
 			Advice: "state the supply with [mains] frequency"}
 	}
 	return l, nil
+}
+
+// ofComb tells a harmonic of strong hum from a test tone: it lies on a mains
+// order, and one of the lowest five orders is stronger. A test tone that lies
+// on an order stands over the hum, or nothing tells the two apart.
+func ofComb(p *analyze.Pass, s *analyze.Signal, tone *stage.Tone) bool {
+	v := stage.SurveyOf(p, s)
+	near := func(hz float64) float64 { return 2*v.ToleranceHz() + 4e-4*hz }
+	if gap, _ := stage.NearMains(tone.Hz, tone.MainsHz, stage.MaxOrder); gap > near(tone.Hz) {
+		return false
+	}
+	top, ok := v.StrongestIn(tone.Hz-near(tone.Hz), tone.Hz+near(tone.Hz), nil)
+	low, found := v.StrongestIn(tone.MainsHz/2, 5.5*tone.MainsHz, func(q spectrum.Peak) bool {
+		gap, _ := stage.NearMains(q.Hz, tone.MainsHz, 5)
+		return gap <= near(q.Hz)
+	})
+	return ok && found && low.Power > top.Power
 }
 
 // comb is a set of mains orders, summed.

@@ -42,12 +42,6 @@ func rmsUnit(s *analyze.Signal) unit.Unit {
 
 func spanOf(s *analyze.Signal) []float64 { return []float64{s.StartS, s.StartS + s.DurationS()} }
 
-// lines takes a signal apart, with its test tone where it has a clear one.
-func lines(p *analyze.Pass, s *analyze.Signal) *stage.Lines {
-	tone, _ := stage.FindTone(p, 0, s)
-	return stage.Decompose(p, s, stage.Options{Tone: tone})
-}
-
 var dc = &analyze.Measure{
 	Name:  "dc",
 	Title: "DC voltage",
@@ -71,7 +65,7 @@ func runDC(p *analyze.Pass) analyze.Result {
 			fmt.Sprintf("take %q was recorded through an AC-coupled input, which does not pass DC", s.Take.Name),
 			"record it with a DC-coupled scope or meter; or, where the input does pass DC, state coupling = \"dc\" for the gear")
 	}
-	l := lines(p, s)
+	l := stage.Apart(p, "take", s, 0)
 	v := l.DC
 	var b budget.Budget
 	b.A("noise", math.Sqrt(l.DensityAt(0)/(2*s.DurationS())), 0)
@@ -110,7 +104,7 @@ func runLevel(p *analyze.Pass) analyze.Result {
 	if bad != nil {
 		return analyze.RefuseWith(u, bad)
 	}
-	l := lines(p, s)
+	l := stage.Apart(p, "take", s, 0)
 	total := stage.Everything(l, band, nil)
 	if total.P <= 0 {
 		return analyze.Refuse(u, analyze.NoSignal, fmt.Sprintf("take %q, channel %d: nothing is left in the band beside DC", s.Take.Name, s.Channel()), "check the connection and the channel")
@@ -135,7 +129,7 @@ func runLevel(p *analyze.Pass) analyze.Result {
 		if _, bad := stage.BandFor(s, band.Band); bad != nil {
 			return stage.Power{}, bad
 		}
-		return stage.Everything(lines(p, s), band, nil), nil
+		return stage.Everything(stage.Apart(p, "floor", s, 0), band, nil), nil
 	})
 	if bad != nil {
 		return analyze.RefuseWith(u, bad)

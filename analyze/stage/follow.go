@@ -95,6 +95,7 @@ func newFollowed(p *analyze.Pass, s *analyze.Signal, toneHz float64, weak bool) 
 	if len(combs) == 0 {
 		return f
 	}
+	start := append([]sinefit.Comb(nil), combs...)
 	estimates := make([][]sinefit.Estimate, len(combs))
 	nus := make([]float64, 0, len(f.Blocks))
 	u2s := make([]float64, 0, len(f.Blocks))
@@ -106,10 +107,19 @@ func newFollowed(p *analyze.Pass, s *analyze.Signal, toneHz float64, weak bool) 
 			buf = make([]float64, n)
 		}
 		y := buf[:s.Read(buf[:n], b.From)]
-		r, err := sinefit.Refine(y, combs, 0.6/float64(n))
+		// Start where the block before ended, unless that led astray.
+		r, err := sinefit.Refine(y, start, 0.6/float64(n))
+		if err == nil && !r.Settled {
+			r, err = sinefit.Refine(y, combs, 0.6/float64(n))
+		}
 		if err != nil {
 			f.Settled = false
 			break
+		}
+		for g := range start {
+			if math.Abs(r.Nu[g]-combs[g].Nu)*float64(n) < 2 {
+				start[g].Nu = r.Nu[g]
+			}
 		}
 		f.Settled = f.Settled && r.Settled
 		f.Cond = math.Max(f.Cond, r.Cond)

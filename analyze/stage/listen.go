@@ -161,3 +161,20 @@ func input(p *analyze.Pass, t *analyze.Take, h *Heard) (Stimulus, *analyze.Refus
 func InputOf(p *analyze.Pass, t *analyze.Take, h *Heard) (Stimulus, *analyze.Refusal) {
 	return input(p, t, h)
 }
+
+// Apart takes the `out` signal of a role's take apart for a measure that needs
+// no tone: with its test tone where it has a clear one, found as the tone
+// measures find it so that the work is shared, else without.
+func Apart(p *analyze.Pass, role string, s *analyze.Signal, mains int) *Lines {
+	search, other := s, (*analyze.Signal)(nil)
+	if p.Wiring(s.Take).In != "" {
+		if in, bad := p.SignalOf(s.Take, role, "in"); bad == nil && in.Len() == s.Len() {
+			search, other = in, s
+		}
+	}
+	tone, bad := FindTone(p, 0, search, other)
+	if bad != nil && other != nil {
+		tone, _ = FindTone(p, 0, s)
+	}
+	return Decompose(p, s, Options{Tone: tone, Mains: mains})
+}

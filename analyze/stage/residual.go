@@ -234,6 +234,5 @@ func (l *Lines) DensityAt(hz float64) float64 {
 		lo, hi = max(0, min(lo, len(d.S)-3)), len(d.S)
 	}
 	v := append([]float64(nil), d.S[lo:hi]...)
-	sort.Float64s(v)
-	return v[len(v)/2] / spectrum.MedianBias(d.Averages)
+	return spectrum.Median(v) / spectrum.MedianBias(d.Averages)
 }

@@ -38,27 +38,6 @@ const (
 // strongest line from 10 Hz to 0.45 of the rate that is no mains line of
 // order 1 to 5.
 func FindTone(p *analyze.Pass, atHz float64, search *analyze.Signal, also ...*analyze.Signal) (*Tone, *analyze.Refusal) {
-	key := fmt.Sprintf("tone/%s/%g/%g", search.ID(), atHz, mainsNominal(p))
-	for _, s := range also {
-		if s != nil {
-			key += "/" + s.ID()
-		}
-	}
-	type found struct {
-		tone *Tone
-		bad  *analyze.Refusal
-	}
-	r := p.Stages.Once(key, func() any {
-		t, bad := findTone(p, atHz, search, also)
-		if t != nil {
-			t.id = key
-		}
-		return found{t, bad}
-	}).(found)
-	return r.tone, r.bad
-}
-
-func findTone(p *analyze.Pass, atHz float64, search *analyze.Signal, also []*analyze.Signal) (*Tone, *analyze.Refusal) {
 	v := SurveyOf(p, search)
 	if bad := nothing(search, v); bad != nil {
 		return nil, bad
@@ -67,16 +46,37 @@ func findTone(p *analyze.Pass, atHz float64, search *analyze.Signal, also []*ana
 	if bad != nil {
 		return nil, bad
 	}
-	t := &Tone{Coarse: coarse}
-	T := search.DurationS()
-	if coarse*T < 1.8 {
-		return nil, tooShort(search, coarse, 1.8)
-	}
 	sigs := []*analyze.Signal{search}
 	for _, s := range also {
 		if s != nil && s.ID() != search.ID() && s.Len() == search.Len() && s.RateHz == search.RateHz {
 			sigs = append(sigs, s)
 		}
+	}
+	key := fmt.Sprintf("tone/%.12g/%g", coarse, mainsNominal(p))
+	for _, s := range sigs {
+		key += "/" + s.ID()
+	}
+	type found struct {
+		tone *Tone
+		bad  *analyze.Refusal
+	}
+	r := p.Stages.Once(key, func() any {
+		t, bad := followTone(p, coarse, sigs)
+		if t != nil {
+			t.id = key
+		}
+		return found{t, bad}
+	}).(found)
+	return r.tone, r.bad
+}
+
+// followTone follows the line near coarse in all signals; the first decides.
+func followTone(p *analyze.Pass, coarse float64, sigs []*analyze.Signal) (*Tone, *analyze.Refusal) {
+	search := sigs[0]
+	t := &Tone{Coarse: coarse}
+	T := search.DurationS()
+	if coarse*T < 1.8 {
+		return nil, tooShort(search, coarse, 1.8)
 	}
 	var sets [][]sinefit.Estimate
 	for i, s := range sigs {

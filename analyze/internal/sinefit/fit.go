@@ -124,17 +124,21 @@ type Comb struct {
 type Refined struct {
 	Fit               // lines in the order of the combs and their orders
 	Nu      []float64 // base frequency of each comb
-	SSR     float64   // sum of squared residuals
+	SSR     float64   // sum of squared residuals, never under the rounding of the sums
 	Steps   int
-	Settled bool // every last step was below 1e-7 of the block's resolution and no longer shrank
+	Settled bool // the last steps were far below the noise, or below rounding
 }
 
 // Refine is the four-parameter fit of IEEE Std 1057 widened to several combs,
 // the base frequency of each free one found by Gauss-Newton with amplitudes
-// and DC solved exactly at every step. The curvature is taken without
+// and DC solved exactly at every step. Each step reads the samples once: the
+// residual's correlation with t times a line is that of the samples less that
+// of the model, which has a closed form. The curvature is taken without
 // coupling to the amplitudes or other combs, which makes steps a little short
-// when the block holds few periods, never long. A comb that leaves its start
-// by more than limit (cycles per sample) is put back there and held.
+// when the block holds few periods, never long. Steps end when all are below
+// a ten thousandth of the Cramer-Rao bound, or no longer shrink for rounding. A
+// comb that leaves its start by more than limit (cycles per sample) is put
+// back there and held.
 func Refine(y []float64, combs []Comb, limit float64) (Refined, error) {
 	n := float64(len(y))
 	var lines []float64
@@ -143,7 +147,6 @@ func Refine(y []float64, combs []Comb, limit float64) (Refined, error) {
 	}
 	S := make([]complex128, len(lines))
 	T := make([]complex128, len(lines))
-	work := make([]float64, len(y))
 	out := Refined{Nu: make([]float64, len(combs))}
 	held := make([]bool, len(combs))
 	last := make([]float64, len(combs))
@@ -151,6 +154,10 @@ func Refine(y []float64, combs []Comb, limit float64) (Refined, error) {
 		out.Nu[g], held[g], last[g] = c.Nu, !c.Free, math.Inf(1)
 	}
 	sum := total(y)
+	energy := 0.0
+	for _, v := range y {
+		energy += v * v
+	}
 	for out.Steps = 1; ; out.Steps++ {
 		i := 0
 		for g, c := range combs {
@@ -163,18 +170,17 @@ func Refine(y []float64, combs []Comb, limit float64) (Refined, error) {
 		if err != nil {
 			return out, err
 		}
-		Sums(y, lines, S, nil)
+		Sums(y, lines, S, T)
 		out.Fit = sv.Solve(sum, S)
-		copy(work, y)
-		Subtract(work, out.DC, lines, out.Z)
-		out.SSR = 0
-		for _, r := range work {
-			out.SSR += r * r
+		left := energy - sum*out.DC
+		for k, z := range out.Z {
+			left -= real(z)*real(S[k]) + imag(z)*imag(S[k])
 		}
+		out.SSR = math.Max(left, 1e-15*energy)
 		if out.Settled || out.Steps > 40 {
 			return out, nil
 		}
-		Sums(work, lines, S, T)
+		takeModel(T, lines, out.Fit)
 		out.Settled = true
 		first := 0
 		for g, c := range combs {
@@ -191,10 +197,16 @@ func Refine(y []float64, combs []Comb, limit float64) (Refined, error) {
 			if held[g] || curve == 0 {
 				continue
 			}
-			step := grad / (curve * n * (n*n - 1) / 12)
-			size := math.Abs(step) * n
-			if size < 1e-11 || (size < 1e-7 && size >= 0.7*last[g]) {
-				continue // as far as rounding allows
+			curve *= n * (n*n - 1) / 12
+			step := grad / curve
+			size := math.Abs(step)
+			bound := math.Sqrt(out.SSR / n / curve) // Cramer-Rao, white noise
+			if size*n < 1e-12 || (size*n < 1e-7 && size >= 0.7*last[g]) {
+				continue
+			}
+			if size < 1e-4*bound { // the amplitudes no longer notice
+				out.Nu[g] += step
+				continue
 			}
 			last[g] = size
 			out.Nu[g] += step
@@ -203,6 +215,35 @@ func Refine(y []float64, combs []Comb, limit float64) (Refined, error) {
 				out.Nu[g], held[g] = c.Nu, true
 			}
 		}
+	}
+}
+
+// slope is sum_i t_i sin(2 pi nu t_i), minus the derivative of kernel.
+func slope(nu float64, n int) float64 {
+	s, c := math.Sincos(math.Pi * nu)
+	N := float64(n)
+	if math.Abs(s)*N < 3e-4 && math.Abs(nu) < 0.25 {
+		return math.Pi * nu * N * (N*N - 1) / 6
+	}
+	if s == 0 {
+		return 0
+	}
+	sn, cn := math.Sincos(2 * math.Pi * Turns(nu, N/2))
+	return (sn*c - N*cn*s) / (2 * s * s)
+}
+
+// takeModel takes the model's own sums of t x(t) exp(-j w t) off T.
+func takeModel(T []complex128, nu []float64, f Fit) {
+	for k, v := range nu {
+		var re, im float64
+		im = -f.DC * slope(v, f.N)
+		for l, z := range f.Z {
+			c := (slope(nu[l]+v, f.N) + slope(nu[l]-v, f.N)) / 2
+			d := (slope(v+nu[l], f.N) + slope(v-nu[l], f.N)) / 2
+			re += -imag(z) * c
+			im -= real(z) * d
+		}
+		T[k] -= complex(re, im)
 	}
 }
 

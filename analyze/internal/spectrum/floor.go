@@ -17,20 +17,19 @@ func MedianBias(k float64) float64 {
 }
 
 // Floor is the density without its lines: the running median over half bins
-// to both sides, its bias removed, found every quarter of half and joined by
+// to both sides, its bias removed, found every half of half and joined by
 // straight lines in the logarithm. Lines must fill less than half of any
 // stretch. Zeros stay zero.
 func (d *Density) Floor(half int) []float64 {
 	n := len(d.S)
 	out := make([]float64, n)
 	bias := MedianBias(d.Averages)
-	step := max(half/4, 1)
+	step := max(half/2, 1)
 	buf := make([]float64, 0, 2*half+1)
 	median := func(k int) float64 {
 		lo, hi := max(k-half, 1), min(k+half+1, n)
 		buf = append(buf[:0], d.S[min(lo, hi-1):hi]...)
-		sort.Float64s(buf)
-		return buf[len(buf)/2] / bias
+		return Median(buf) / bias
 	}
 	last, lastAt := median(0), 0
 	out[0] = last
@@ -50,6 +49,37 @@ func (d *Density) Floor(half int) []float64 {
 			return out
 		}
 	}
+}
+
+// Median is the upper median of x, which it reorders (Hoare's selection).
+func Median(x []float64) float64 {
+	lo, hi, k := 0, len(x)-1, len(x)/2
+	for lo < hi {
+		pivot := x[(lo+hi)/2]
+		i, j := lo, hi
+		for i <= j {
+			for x[i] < pivot {
+				i++
+			}
+			for pivot < x[j] {
+				j--
+			}
+			if i <= j {
+				x[i], x[j] = x[j], x[i]
+				i++
+				j--
+			}
+		}
+		switch {
+		case k <= j:
+			hi = j
+		case k >= i:
+			lo = i
+		default:
+			return x[k]
+		}
+	}
+	return x[k]
 }
 
 // Peak is a local maximum that stands out of the floor.
