@@ -39,12 +39,8 @@ type app struct {
 	raw bool
 }
 
-// usageError is a fault of the command line.
-type usageError struct{ error }
-
-func usagef(format string, args ...any) error {
-	return usageError{fmt.Errorf(format, args...)}
-}
+// usagef words a fault of the command line.
+func usagef(format string, args ...any) error { return fmt.Errorf(format, args...) }
 
 // Run runs the program with the given arguments and returns its exit status.
 func Run(ctx context.Context, args []string, _ io.Reader, stdout, stderr io.Writer) (status int) {
@@ -79,7 +75,7 @@ func Run(ctx context.Context, args []string, _ io.Reader, stdout, stderr io.Writ
 func (a *app) execute(ctx context.Context, args []string) error {
 	root := a.root()
 	root.SetArgs(args)
-	if _, _, err := root.Find(args); err != nil {
+	if _, _, err := root.Find(args); err != nil { // names that are no command
 		return unknownCommand(root, args)
 	}
 	return root.ExecuteContext(ctx)
@@ -88,14 +84,10 @@ func (a *app) execute(ctx context.Context, args []string) error {
 // fault prints an error, which makes the status 2.
 func (a *app) fault(err error) {
 	a.status = exitFault
-	switch {
-	case errors.Is(err, context.Canceled):
-		a.message("benchslip: interrupted, nothing was written")
-	case errors.As(err, new(usageError)):
-		a.message("benchslip: %v", err)
-	default:
-		a.message("benchslip: %v", err)
+	if errors.Is(err, context.Canceled) {
+		err = errors.New("interrupted, nothing was written")
 	}
+	a.message("benchslip: %v", err)
 }
 
 // maxMessage is the length of the longest message, in bytes.
@@ -129,20 +121,21 @@ limits of a job file, and writes a slip to attach to a ticket.`,
 	root.SetOut(&a.out)
 	root.SetErr(a.err)
 	root.SetFlagErrorFunc(func(cmd *cobra.Command, err error) error {
+		if !cmd.HasParent() {
+			return usagef("%s; see benchslip --help", flagFault(cmd, err))
+		}
 		return usagef("%s: %s; see %s --help", words(cmd), flagFault(cmd, err), cmd.CommandPath())
 	})
 	root.SetHelpFunc(func(cmd *cobra.Command, _ []string) { a.help(cmd) })
 	root.AddCommand(a.runCommand(), a.lookCommand(), a.measureCommand(), a.demoCommand(),
 		a.completionCommand(), a.versionCommand())
 	root.SetHelpCommand(a.helpCommand())
+	root.InitDefaultHelpCmd()
 	return root
 }
 
 // words is the command without the program's name, for messages.
 func words(cmd *cobra.Command) string {
-	if !cmd.HasParent() {
-		return "benchslip"
-	}
 	return strings.TrimPrefix(cmd.CommandPath(), cmd.Root().Name()+" ")
 }
 

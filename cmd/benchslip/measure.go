@@ -157,9 +157,11 @@ func measureText(m *analyze.Measure) string {
 			fmt.Fprintf(&b, "\n%-9s %s", part[0], strings.Join(lines, "\n          "))
 		}
 	}
-	if own := keys.Own(m.Name); len(own) > 0 {
-		fmt.Fprintf(&b, "\n%-9s %s", "keys", strings.Join(report.Wrap(strings.Join(own, ", "), 70), "\n          "))
+	own := "those that every measure takes"
+	if names := keys.Own(m.Name); len(names) > 0 {
+		own = strings.Join(names, ", ") + ", and " + own
 	}
+	fmt.Fprintf(&b, "\n%-9s %s", "keys", strings.Join(report.Wrap(own, 70), "\n          "))
 	return b.String()
 }
 
