@@ -1,7 +1,6 @@
 package report
 
 import (
-	"strconv"
 	"strings"
 	"unicode"
 	"unicode/utf8"
@@ -109,20 +108,15 @@ func cutAt(s string, width int) int {
 }
 
 // Cell writes text as one CSV field (RFC 4180). Spreadsheets run a cell that
-// begins with = + - @ as a formula, a plain number apart: such text gets an
-// apostrophe before it.
+// begins with = + - @ as a formula: such text gets an apostrophe before it.
+// Numbers do not pass through here.
 func Cell(s string) string {
 	s = Clean(s)
-	if t := strings.TrimLeft(s, " "); t != "" && strings.ContainsRune("=+-@", rune(t[0])) && !isNumber(s) {
+	if t := strings.TrimLeft(s, " "); t != "" && strings.ContainsRune("=+-@", rune(t[0])) {
 		s = "'" + s
 	}
 	if strings.ContainsAny(s, "\",\r\n") || s != strings.TrimSpace(s) {
 		return `"` + strings.ReplaceAll(s, `"`, `""`) + `"`
 	}
 	return s
-}
-
-func isNumber(s string) bool {
-	_, err := strconv.ParseFloat(s, 64)
-	return err == nil && !strings.ContainsAny(s, "xXpPnNiI_+@")
 }

@@ -220,6 +220,20 @@ func plain(x float64) string {
 	return strconv.FormatFloat(x, 'f', -1, 64)
 }
 
+// Number prints a number for programs, as slip.json and slip.csv do: the
+// shortest decimal that reads back as the float64 rounded to 12 significant
+// digits.
+func Number(x float64) string {
+	x, _ = strconv.ParseFloat(strconv.FormatFloat(x, 'e', 11, 64), 64)
+	if x == 0 {
+		return "0" // no negative zero
+	}
+	if a := math.Abs(x); a < 1e-6 || a >= 1e21 {
+		return strconv.FormatFloat(x, 'e', -1, 64)
+	}
+	return strconv.FormatFloat(x, 'f', -1, 64)
+}
+
 // Digits prints any other number of a sheet to n significant digits.
 func Digits(x float64, n int) string {
 	if x == math.Trunc(x) && math.Abs(x) < 1e9 {

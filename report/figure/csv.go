@@ -31,11 +31,11 @@ func CSV(f *analyze.Figure) []byte {
 			if i > 0 {
 				b.WriteByte(',')
 			}
-			b.WriteString(report.Cell(c))
+			b.WriteString(c)
 		}
 		b.WriteString("\r\n")
 	}
-	row("part", "name", head(f.X, "x"), head(f.Y, "y"), "low")
+	row("part", "name", report.Cell(head(f.X, "x")), report.Cell(head(f.Y, "y")), "low")
 	point := func(lead string, x, y float64, low string) {
 		b.WriteString(lead + num(x) + "," + num(y) + "," + low + "\r\n")
 	}
@@ -73,13 +73,13 @@ func CSV(f *analyze.Figure) []byte {
 		}
 	}
 	for _, m := range f.Marks {
-		row("mark", strings.TrimSpace(m.Kind+" "+m.Label), num(m.X), num(m.Y), "")
+		row("mark", report.Cell(strings.TrimSpace(m.Kind+" "+m.Label)), num(m.X), num(m.Y), "")
 	}
 	for _, r := range f.Rules {
 		if r.Vertical {
-			row("rule", r.Label, num(r.At), "", "")
+			row("rule", report.Cell(r.Label), num(r.At), "", "")
 		} else {
-			row("rule", r.Label, "", num(r.At), "")
+			row("rule", report.Cell(r.Label), "", num(r.At), "")
 		}
 	}
 	return []byte(b.String())

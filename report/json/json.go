@@ -24,6 +24,7 @@ import (
 	"unicode/utf8"
 
 	"benchslip/analyze/slip"
+	"benchslip/report"
 )
 
 // Render writes the slip with a final line feed.
@@ -46,20 +47,12 @@ func Write(w io.Writer, v any) error {
 	return err
 }
 
-// Number prints x as in slip.json: shortest form of x rounded to 12
-// significant digits, "null" when x is not finite.
-func Number(x float64) string {
+// number is the one way in which slips write numbers, null when not finite.
+func number(x float64) string {
 	if math.IsNaN(x) || math.IsInf(x, 0) {
 		return "null"
 	}
-	x, _ = strconv.ParseFloat(strconv.FormatFloat(x, 'e', 11, 64), 64)
-	if x == 0 {
-		return "0" // no negative zero
-	}
-	if a := math.Abs(x); a < 1e-6 || a >= 1e21 {
-		return strconv.FormatFloat(x, 'e', -1, 64)
-	}
-	return strconv.FormatFloat(x, 'f', -1, 64)
+	return report.Number(x)
 }
 
 // node is a value on its way out: a scalar already in its final text, or a
@@ -91,7 +84,7 @@ func (e *encoder) tree(v reflect.Value, place string) (node, error) {
 	case reflect.Uint, reflect.Uint8, reflect.Uint16, reflect.Uint32, reflect.Uint64:
 		return scalar(strconv.FormatUint(v.Uint(), 10)), nil
 	case reflect.Float32, reflect.Float64:
-		return scalar(Number(v.Float())), nil
+		return scalar(number(v.Float())), nil
 	case reflect.String:
 		return scalar(quote(v.String())), nil
 	case reflect.Slice, reflect.Array:

@@ -25,8 +25,8 @@ func TestNumber(t *testing.T) {
 		{math.MaxFloat64, "1.79769313486e+308"}, {5e-324, "5e-324"},
 		{math.NaN(), "null"}, {math.Inf(1), "null"}, {math.Inf(-1), "null"},
 	} {
-		if got := Number(c.x); got != c.want {
-			t.Errorf("Number(%v) = %s, want %s", c.x, got, c.want)
+		if got := number(c.x); got != c.want {
+			t.Errorf("number(%v) = %s, want %s", c.x, got, c.want)
 		}
 	}
 }
@@ -35,12 +35,12 @@ func TestNumber(t *testing.T) {
 func TestNumberReadsBack(t *testing.T) {
 	x := 1.2345678901234567e-30
 	for range 400 {
-		got, err := strconv.ParseFloat(Number(x), 64)
+		got, err := strconv.ParseFloat(number(x), 64)
 		if err != nil || math.Abs(got-x) > 5e-12*math.Abs(x) {
-			t.Fatalf("%v written as %s reads %v (%v)", x, Number(x), got, err)
+			t.Fatalf("%v written as %s reads %v (%v)", x, number(x), got, err)
 		}
-		if again := Number(got); again != Number(x) {
-			t.Fatalf("%s is not stable: %s", Number(x), again)
+		if again := number(got); again != number(x) {
+			t.Fatalf("%s is not stable: %s", number(x), again)
 		}
 		x *= -1.4142135623730951
 	}

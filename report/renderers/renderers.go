@@ -11,9 +11,12 @@ import (
 
 	"benchslip/analyze/slip"
 	"benchslip/report"
+	"benchslip/report/csv"
 	"benchslip/report/figure"
 	"benchslip/report/html"
 	"benchslip/report/json"
+	"benchslip/report/junit"
+	"benchslip/report/markdown"
 	"benchslip/report/text"
 )
 
@@ -29,6 +32,9 @@ func All() []Renderer {
 	return []Renderer{
 		{"slip.html", html.Render},
 		{"slip.txt", text.Render},
+		{"slip.csv", csv.Render},
+		{"slip.md", markdown.Render},
+		{"slip.xml", junit.Render},
 		{"slip.json", json.Render},
 	}
 }
