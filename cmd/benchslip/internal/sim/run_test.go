@@ -91,6 +91,25 @@ func TestSlipsTellTheTruth(t *testing.T) {
 	}
 }
 
+// TestFailingRowNamesItsResistor: the mismatch beside the failing CMRR is that
+// of the resistors, 1 % of it allowed for the output divider and the channels.
+func TestFailingRowNamesItsResistor(t *testing.T) {
+	if testing.Short() {
+		t.Skip("runs the whole analysis")
+	}
+	for _, c := range slipOf(t, "preamp").Checks {
+		if c.Name == "CMRR at the 20 dB step" {
+			got, ok := c.Details["mismatch"].(float64)
+			if !ok {
+				t.Fatalf("no mismatch in the details: %v", c.Details)
+			}
+			near(t, "mismatch", got, skerryPreamp(sp017at20, demoMains(0)).Amp.Mismatch(), 0.01)
+			return
+		}
+	}
+	t.Error("the row is missing")
+}
+
 // TestDemoShowsItsVerdicts: one row fails for its resistor, one stays open at
 // its limit, everything else passes.
 func TestDemoShowsItsVerdicts(t *testing.T) {
