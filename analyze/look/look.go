@@ -19,6 +19,8 @@ import (
 type File struct {
 	slip.Take
 	Levels []Level `json:"levels"`
+
+	Figures []analyze.Figure `json:"-"` // waveform and spectrum a channel, when asked for
 }
 
 // Level holds one channel's levels over all frames, in the file's own unit:
@@ -47,9 +49,10 @@ type Line struct {
 // mostLines is how many lines a channel lists.
 const mostLines = 8
 
-// Open looks at the recording at path, calling it name. A fault of the file
-// is a *analyze.Refusal; the error is that of ctx.
-func Open(ctx context.Context, name, path string, csv capture.Options) (*File, *analyze.Refusal, error) {
+// Open looks at the recording at path, calling it name, and makes figures of
+// its first channels when asked to. A fault of the file is a *analyze.Refusal;
+// the error is that of ctx.
+func Open(ctx context.Context, name, path string, csv capture.Options, draw bool) (*File, *analyze.Refusal, error) {
 	t := &analyze.Take{Name: name, File: name, Path: path, CSV: csv}
 	if err := intake.Open(ctx, t); err != nil || t.Fault != nil {
 		return nil, t.Fault, err
@@ -68,8 +71,10 @@ func Open(ctx context.Context, name, path string, csv capture.Options) (*File, *
 			Mean: finite(l.Mean), RMS: finite(l.RMS), Min: finite(l.Min), Max: finite(l.Max),
 			Peak: finite(l.Peak), Crest: finite(l.Crest), Lines: []Line{},
 		}
+		whole := in.RateHz > 0 && in.Frames > 0 && l.Count == in.Frames // no sample is missing
+		lines := whole && in.Frames >= leastFrames && l.AC > 0
 		var seen *stage.Survey
-		if in.RateHz > 0 && in.Frames >= leastFrames && l.Count == in.Frames && l.AC > 0 {
+		if lines {
 			seen = stage.SurveyOf(pass, analyze.NewSignal(t, i+1, 0, 0, in.Frames, 1))
 			for _, p := range seen.Peaks {
 				// What stands at the foot of DC is no line.
@@ -77,6 +82,9 @@ func Open(ctx context.Context, name, path string, csv capture.Options) (*File, *
 					level.Lines = append(level.Lines, Line{p.Hz, math.Sqrt(p.Power)})
 				}
 			}
+		}
+		if draw && whole && i < mostChannels {
+			f.Figures = append(f.Figures, figures(pass, analyze.NewSignal(t, i+1, 0, 0, in.Frames, 1), lines)...)
 		}
 		level.Text = sentence(t, i, seen)
 		f.Levels = append(f.Levels, level)

@@ -3,7 +3,6 @@ package main
 import (
 	"fmt"
 	"math"
-	"os"
 	"path/filepath"
 	"strings"
 
@@ -20,6 +19,7 @@ import (
 
 func (a *app) lookCommand() *cobra.Command {
 	var asJSON bool
+	var plot string
 	var csv csvOptions
 	cmd := &cobra.Command{
 		Use:   "look FILE...",
@@ -35,18 +35,22 @@ to the RMS of a full-scale sine. Levels of scope files are volts as written.`,
 	}
 	cmd.Flags().SortFlags = false
 	cmd.Flags().BoolVar(&asJSON, "json", false, "print it for a program instead")
+	cmd.Flags().StringVar(&plot, "plot", "", "draw waveform and spectrum of each channel of one recording into `FILE.svg`")
 	csv.add(cmd)
 	cmd.RunE = func(cmd *cobra.Command, args []string) error {
 		opt, err := csv.options(cmd)
 		if err != nil {
 			return err
 		}
+		if plot != "" && (len(args) > 1 || !strings.EqualFold(filepath.Ext(plot), ".svg")) {
+			return usagef("look: --plot draws one recording into a file that ends in .svg")
+		}
 		doc := struct {
 			Format int          `json:"format"`
 			Files  []*look.File `json:"files"`
 		}{Format: 1}
 		for _, path := range args {
-			f, fault, err := look.Open(cmd.Context(), filepath.ToSlash(path), path, opt)
+			f, fault, err := look.Open(cmd.Context(), filepath.ToSlash(path), path, opt, plot != "")
 			if err != nil {
 				return err
 			}
@@ -59,6 +63,14 @@ to the RMS of a full-scale sine. Levels of scope files are volts as written.`,
 		}
 		if len(doc.Files) == 0 {
 			return nil
+		}
+		if plot != "" {
+			if len(doc.Files[0].Figures) == 0 {
+				return fmt.Errorf("%s: nothing to draw: no channel has a rate and a value in every sample", args[0])
+			}
+			if err := writeFile(plot, stacked(doc.Files[0].Figures)); err != nil {
+				return err
+			}
 		}
 		if asJSON {
 			a.raw = true
@@ -208,19 +220,4 @@ func columns(rows [][]string, indent string) string {
 		b.WriteString(strings.TrimRight(line, " ") + "\n")
 	}
 	return b.String()
-}
-
-// writeFile writes one file of a result, whole or not at all: beside its place
-// under a dot name first.
-func writeFile(path string, data []byte) error {
-	tmp := filepath.Join(filepath.Dir(path), ".new-"+filepath.Base(path))
-	if err := os.WriteFile(tmp, data, 0o666); err != nil {
-		os.Remove(tmp)
-		return fmt.Errorf("%s: cannot be written: %w", path, cause(err))
-	}
-	if err := os.Rename(tmp, path); err != nil {
-		os.Remove(tmp)
-		return fmt.Errorf("%s: cannot be written: %w", path, cause(err))
-	}
-	return nil
 }

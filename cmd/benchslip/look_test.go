@@ -1,8 +1,12 @@
 package main
 
 import (
+	"bytes"
 	"encoding/json"
+	"encoding/xml"
+	"io"
 	"math"
+	"os"
 	"path/filepath"
 	"strings"
 	"testing"
@@ -67,5 +71,47 @@ func TestLookJSON(t *testing.T) {
 	}
 	if status, stdout, _ := call(t, "look", "--json", bad); status != 2 || stdout != "" {
 		t.Errorf("nothing readable: status %d, stdout %q", status, stdout)
+	}
+}
+
+func TestLookPlot(t *testing.T) {
+	file := filepath.Join(t.TempDir(), "tone.svg")
+	tone := filepath.Join(bench, "tone.wav")
+	if status, _, stderr := call(t, "look", tone, "--plot", file); status != 0 || stderr != "" {
+		t.Fatalf("status %d: %s", status, stderr)
+	}
+	data, err := os.ReadFile(file)
+	if err != nil {
+		t.Fatal(err)
+	}
+	d := xml.NewDecoder(bytes.NewReader(data))
+	drawings := 0
+	for {
+		tok, err := d.Token()
+		if err == io.EOF {
+			break
+		}
+		if err != nil {
+			t.Fatalf("no XML: %v", err)
+		}
+		if e, ok := tok.(xml.StartElement); ok && e.Name.Local == "svg" {
+			drawings++
+		}
+	}
+	if drawings != 5 { // the document, waveform and spectrum of two channels
+		t.Errorf("%d drawings", drawings)
+	}
+	for _, part := range []string{"1.042 kHz", "Frequency", "Waveform"} {
+		if !strings.Contains(strings.ToLower(string(data)), strings.ToLower(part)) {
+			t.Errorf("the drawing lacks %q", part)
+		}
+	}
+	for _, args := range [][]string{{"look", tone, tone, "--plot", file}, {"look", tone, "--plot", "x.png"}} {
+		if status, stdout, stderr := call(t, args...); status != 2 || stdout != "" || !strings.Contains(stderr, "--plot") {
+			t.Errorf("%q: status %d, %q", args, status, stderr)
+		}
+	}
+	if status, stdout, stderr := call(t, "look", tone, "--plot", filepath.Join(t.TempDir(), "none", "x.svg")); status != 2 || !strings.Contains(stderr, "x.svg") {
+		t.Errorf("an unwritable plot: status %d, %q, %q", status, stdout, stderr)
 	}
 }
