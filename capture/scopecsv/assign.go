@@ -3,7 +3,9 @@ package scopecsv
 import (
 	"bytes"
 	"fmt"
+	"maps"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -169,7 +171,14 @@ func (a *assembly) readSettings() {
 			}
 		}
 	}
-	for c, v := range a.heads.under {
+	// "t0 = -1e-3" and "dt = 1e-6" in cells of the header row.
+	for _, c := range sortedKeys(a.heads.extra) {
+		if key, value := keyValue([]byte(a.heads.extra[c]), 0); value != "" {
+			a.takePair(key, []string{value}, a.heads.line)
+		}
+	}
+	for _, c := range sortedKeys(a.heads.under) {
+		v := a.heads.under[c]
 		kind, unit := settingOf(a.heads.extra[c])
 		if kind != noSetting {
 			var values []string
@@ -182,6 +191,10 @@ func (a *assembly) readSettings() {
 	for _, r := range a.t.footer {
 		a.readPair(r)
 	}
+}
+
+func sortedKeys(m map[int]string) []int {
+	return slices.Sorted(maps.Keys(m))
 }
 
 // readPair reads one row of settings: a name and one value a channel.
@@ -228,7 +241,16 @@ func (a *assembly) takeNote(kind settingKind, key, unit string, values []string,
 	switch kind {
 	case timeUnitSetting, valueUnitSetting:
 		for _, v := range values {
+			if i := strings.LastIndexByte(v, ':'); i >= 0 {
+				v = v[i+1:]
+			}
+			if _, in, ok := bracketed(v); ok {
+				v = in
+			}
 			q, f := unitOf(v)
+			if q == unknown && !looksUnit(v) {
+				continue
+			}
 			fig := figure{v: f, q: q, text: v, key: key, line: line}
 			if q == seconds && (kind == timeUnitSetting || s.timeUnit.text == "") {
 				s.timeUnit = fig
@@ -257,6 +279,9 @@ func (a *assembly) takeNote(kind settingKind, key, unit string, values []string,
 		fig, ok := a.lay.stated(v, behind)
 		if !ok {
 			continue
+		}
+		if plain, _ := plainKey(key); plain == "clock" && fig.q == unknown {
+			continue // a clock without a unit may be anything
 		}
 		got = true
 		fig.key, fig.line = key, line
@@ -313,6 +338,14 @@ func (a *assembly) assignColumns(numeric []bool) error {
 			a.role[c] = dateRole
 		}
 	}
+	if n := a.countRole(channel); n > 32 && n > 4*a.t.n {
+		return a.fault(a.lay.line, recording.ErrUnsupported, fmt.Sprintf("%s of %d numbers each: the samples seem to run along the rows", plural(a.t.n, "row"), n), "export one sample a row")
+	}
+	for c := range w {
+		if err := a.unitColumn(c, numeric); err != nil {
+			return err
+		}
+	}
 	if err := a.frequencyAxis(numeric); err != nil {
 		return err
 	}
@@ -338,6 +371,44 @@ func (a *assembly) assignColumns(numeric []bool) error {
 	return nil
 }
 
+func (a *assembly) countRole(r role) int {
+	n := 0
+	for _, x := range a.role {
+		if x == r {
+			n++
+		}
+	}
+	return n
+}
+
+// unitColumn takes a column of unit words as the unit of the numbers to its
+// left (or right, when none stand left). Units that change are refused.
+func (a *assembly) unitColumn(c int, numeric []bool) error {
+	k := &a.t.col[c]
+	if numeric[c] || a.beside[c] || k.text == 0 || !k.words {
+		return nil
+	}
+	q, f := unitOf(k.say)
+	if q == counts || q == other && len(k.say) < 2 && !strings.Contains(strings.ToLower(a.heads.col[c].full), "unit") {
+		return nil
+	}
+	d := c - 1
+	if d < 0 || !numeric[d] || a.t.col[d].count[clock] > 0 {
+		if d = c + 1; d >= len(numeric) || !numeric[d] || a.t.col[d].count[clock] > 0 {
+			return nil
+		}
+	}
+	if k.varies > 0 {
+		return a.fault(k.varies, recording.ErrAmbiguous, fmt.Sprintf("the unit of %s changes from row to row (%q at first)", a.title(d), k.say), "export it with one fixed range")
+	}
+	h := &a.heads.col[d]
+	if h.q != unknown && (h.q != q || h.f != f) {
+		return a.fault(k.text, recording.ErrAmbiguous, fmt.Sprintf("%s is in %q by its header and in %q by the column beside it", a.title(d), h.unit, k.say), `say [takes.NAME.csv] value_unit = "V"`)
+	}
+	h.unit, h.q, h.f, h.from = k.say, q, f, "the column beside it"
+	return nil
+}
+
 // checkText judges text in a column: a column of words is left out, damage is
 // refused, single bad cells are marked missing later.
 func (a *assembly) checkText(c int, numeric bool) error {
@@ -353,6 +424,9 @@ func (a *assembly) checkText(c int, numeric bool) error {
 		return a.fault(k.text, recording.ErrFormat, fmt.Sprintf("a cell holds structured text (%q): a summary, not samples", short(k.say)), "export the samples as a table of numbers")
 	}
 	if !numeric {
+		if sign := pick(k.say, whyOf(k)); data == 0 && k.varies == 0 && (sign == "+" || sign == "-") || data == 0 && k.words == false && k.say == "+" {
+			return a.fault(max(k.text, a.lay.line), recording.ErrFormat, fmt.Sprintf("column %d holds signs apart from their numbers", c+1), "export numbers with their signs")
+		}
 		if data == 0 {
 			if k.count[prose] == 0 && a.lay.core[c] {
 				a.flag(recording.Overrange, 0, nil, nil, "%s left out: no cell of it holds a value (%s)", a.title(c), k.lost[0].why)
@@ -376,6 +450,16 @@ func (a *assembly) checkText(c int, numeric bool) error {
 		return a.fault(k.bareAt, recording.ErrAmbiguous, fmt.Sprintf("%s has numbers with a unit behind them and numbers without", a.title(c)), "export it with one fixed unit")
 	}
 	return nil
+}
+
+// whyOf is the first mark in a column without values.
+func whyOf(k *column) string {
+	for _, l := range k.lost {
+		if l.kind == marker {
+			return l.why
+		}
+	}
+	return ""
 }
 
 // otherSeparator tells a separator other than the file's under which text
@@ -530,6 +614,9 @@ func (a *assembly) timeByLook() error {
 			byName = append(byName, c)
 		}
 	}
+	if len(byClock) > 0 {
+		byUnit = a.takeMillis(byClock[0], byUnit)
+	}
 	for _, list := range [][]int{byUnit, byName} {
 		for _, c := range list {
 			if a.time < 0 && (a.axisLike(c) || len(list) == 1 && timeWord(a.heads.col[c].full)) {
@@ -576,6 +663,30 @@ func (a *assembly) timeByLook() error {
 		}
 	}
 	return nil
+}
+
+// takeMillis adds a column of milliseconds 0..999 to a clock that shows whole
+// seconds.
+func (a *assembly) takeMillis(c int, byUnit []int) []int {
+	if a.t.col[c].q < 1 {
+		return byUnit
+	}
+	for i, d := range byUnit {
+		k, h := &a.t.col[d], a.heads.col[d]
+		if h.f != 1e-3 || k.glued > 0 {
+			continue
+		}
+		fits := true
+		for _, v := range k.v {
+			fits = fits && !(v < 0 || v >= 1000)
+		}
+		if fits {
+			a.role[d] = leftOut
+			a.millis = d
+			return append(byUnit[:i:i], byUnit[i+1:]...)
+		}
+	}
+	return byUnit
 }
 
 // axisLike says whether a column rises or falls in most rows.

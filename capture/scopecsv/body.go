@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"fmt"
 	"math"
+	"slices"
 
 	"benchslip/capture/num"
 	"benchslip/capture/recording"
@@ -24,6 +25,8 @@ type column struct {
 	start  int    // line of the first number
 	text   int    // line of the first cell of text
 	say    string // that text
+	varies int    // line of the first text that differs from it
+	words  bool   // every text is a unit
 	q      float64
 	dates  int // clock cells with a date
 	times  int // clock cells with a time
@@ -104,6 +107,7 @@ func (f *file) scan(lay *layout) (*body, error) {
 		gapAt  int     // line of the first blank row since then
 		budget = len(b) - p + w
 		off    = math.MinInt
+		clocks = slices.Contains(lay.clock, true)
 	)
 	for p < len(b) {
 		if t.n == room {
@@ -190,7 +194,7 @@ func (f *file) scan(lay *layout) (*body, error) {
 		thisLine := line
 		line += rowLines
 
-		if len(odds) == 0 && c >= w && !wide {
+		if len(odds) == 0 && c >= w && !wide && !clocks {
 			if t.short > 0 {
 				return nil, f.narrowRow(lay, t.short)
 			}
@@ -309,46 +313,43 @@ const (
 
 // judge says whether an irregular row holds samples, nothing, or text.
 func (lay *layout) judge(odds []oddCell, plain, c int, wide bool) int {
-	holds, proseCore, firstProse, any := plain, false, false, plain > 0
-	coreHolds := 0
-	next := 0
-	for i := 0; i < min(c, lay.width); i++ {
-		k := number
+	any := plain > 0 || wide
+	holds := plain         // cells anywhere that hold data
+	core, text := 0, false // core cells that hold data; one that holds text
+	first := false         // text in the first core column
+	for i, next := 0, 0; i < min(c, lay.width); i++ {
+		o := oddCell{c: i, cell: cell{kind: number}}
 		if next < len(odds) && odds[next].c == i {
-			k = odds[next].kind
+			o = odds[next]
 			next++
-			if k.holds() {
+			any = any || o.kind != blank
+			if o.kind.holds() {
 				holds++
 			}
 		}
-		if k != blank {
-			any = true
-		}
-		if lay.core[i] {
-			if k.holds() {
-				coreHolds++
-			}
-			if k == prose {
-				proseCore = true
-				// Text in the first column makes the row text, unless it looks
-				// like a damaged number or clock time.
-				if r := odds[next-1].raw; i == lay.first && !(len(r) > 0 && (r[0]-'0' <= 9 || r[0] == '-' || r[0] == '+' || r[0] == '.' || r[0] == '#')) {
-					firstProse = true
-				}
-			}
+		switch {
+		case !lay.core[i]:
+		case o.kind == prose, lay.alien(i, o.kind):
+			text = true
+			// A damaged number or clock time in the first column is a bad cell
+			// of a row of samples; any other text makes the row text.
+			first = first || i == lay.first && (o.kind != prose || !numberLike(o.raw))
+		case o.kind.holds():
+			core++
 		}
 	}
 	switch {
-	case !any && !wide:
+	case !any:
 		return isNothing
-	case firstProse, proseCore && coreHolds == 0:
+	case first, text && core == 0, core == 0 && (wide || holds == 0):
 		return isText
-	case coreHolds == 0:
-		if wide || holds == 0 {
-			return isText
-		}
 	}
 	return isSamples
+}
+
+// numberLike says whether text begins as a number, a clock time or a mark does.
+func numberLike(b []byte) bool {
+	return len(b) > 0 && (b[0]-'0' <= 9 || b[0] == '-' || b[0] == '+' || b[0] == '.' || b[0] == '#')
 }
 
 // storeOdd stores a cell that is no plain number.
@@ -398,10 +399,26 @@ func (f *file) storeOdd(k *column, c *cell, n, line int) {
 	case marker:
 		k.lose(n, marker, c.why, line)
 	case prose:
-		if k.text == 0 {
-			k.text, k.say = line, short(words(c.raw[:min(len(c.raw), 200)]))
-		}
+		k.noteText(c.raw, line)
 		k.lose(n, prose, "not a number", line)
+	}
+}
+
+// noteText keeps the first text of a column and whether all are units.
+func (k *column) noteText(raw []byte, line int) {
+	if k.text > 0 && !k.words && k.varies > 0 {
+		return
+	}
+	say := short(words(raw[:min(len(raw), 200)]))
+	if k.text == 0 {
+		k.text, k.say = line, say
+		k.words = true
+	}
+	if say != k.say && k.varies == 0 {
+		k.varies = line
+	}
+	if q, _ := unitOf(say); q == unknown {
+		k.words = false
 	}
 }
 

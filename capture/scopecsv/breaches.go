@@ -38,9 +38,12 @@ func (a *assembly) checkBreaches() error {
 	return nil
 }
 
-// checkStray refuses a row of text that is a row of numbers under another
-// separator.
+// checkStray refuses a row taken as text that is a row of numbers under another
+// separator or with another form of time.
 func (a *assembly) checkStray(r row) error {
+	if _, kinds := a.lay.profile(r.text, nil, nil); a.lay.otherClock(kinds) {
+		return a.twoClocks(r)
+	}
 	if sep := a.otherSeparator(r.text); sep != 0 {
 		return a.fault(r.line, recording.ErrFormat, fmt.Sprintf("cells are parted by %s here and by %s in other rows (%q)", sepName(sep), sepName(a.lay.sep), short(words(r.text))),
 			"export it again without a detour through a spreadsheet")

@@ -211,6 +211,12 @@ func (a *assembly) flagMode() {
 	case strings.HasPrefix(mode, "averag"):
 		a.flag(recording.Averaged, 0, nil, nil, "the settings say %q (line %d): noise is lower than in one sweep", a.set.mode, a.set.modeLine)
 	}
+	for _, ch := range a.info.Channels {
+		if l := strings.ToLower(ch.Name); strings.Contains(l, "peak detect") || strings.Contains(l, "peak-detect") || strings.Contains(l, "envelope") {
+			a.flag(recording.PeakDetect, 0, nil, nil, "column %q holds extremes, not samples", ch.Full)
+			return
+		}
+	}
 	names := map[string]bool{}
 	for _, ch := range a.info.Channels {
 		names[strings.ToLower(ch.Name)] = true

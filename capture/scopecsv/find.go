@@ -104,16 +104,16 @@ func (f *file) findColumns(lay *layout, rows []sampled) error {
 	var buf [][]byte
 	var kinds []kind
 	widths := map[int]int{}
-	type tally struct{ data, rows, named int }
+	type tally struct{ data, rows, named, clocks int }
 	byWidth := map[int][]tally{}
 	for _, r := range rows {
 		buf, kinds = lay.profile(r.text, buf, kinds)
 		data, filled := 0, 0
-		for _, k := range kinds {
+		for c, k := range kinds {
 			if k.holds() {
 				data++
 			}
-			if k != blank {
+			if k != blank && !(k == prose && isUnitWord(words(trimmed(buf[c])))) {
 				filled++
 			}
 		}
@@ -131,6 +131,9 @@ func (f *file) findColumns(lay *layout, rows []sampled) error {
 			t[c].rows++
 			if k.holds() {
 				t[c].data++
+				if k == clock {
+					t[c].clocks++
+				}
 				if c > 0 && kinds[c-1] == prose && settingWord(words(trimmed(buf[c-1]))) {
 					t[c].named++
 				}
@@ -147,12 +150,13 @@ func (f *file) findColumns(lay *layout, rows []sampled) error {
 		return f.notSamples(lay, rows)
 	}
 	lay.width = best
-	lay.core = make([]bool, best)
+	lay.core, lay.clock = make([]bool, best), make([]bool, best)
 	cores := 0
 	for c, t := range byWidth[best] {
 		if lay.core[c] = t.data*2 >= t.rows; lay.core[c] {
 			cores++
 		}
+		lay.clock[c] = t.clocks*2 > t.data
 	}
 	for c, t := range byWidth[best] {
 		// In a short table settings may stand beside every row: a value with
@@ -174,6 +178,31 @@ func (f *file) findColumns(lay *layout, rows []sampled) error {
 	return nil
 }
 
+// otherClock says whether a row is one of samples but for a number where the
+// others have a clock time, or the other way round.
+func (lay *layout) otherClock(kinds []kind) bool {
+	alien := false
+	for c, k := range kinds {
+		if c < lay.width && lay.core[c] {
+			if k != number && k != clock {
+				return false
+			}
+			alien = alien || lay.alien(c, k)
+		}
+	}
+	return alien && len(kinds) >= lay.width
+}
+
+func (f *file) twoClocks(r row) error {
+	return f.fault(r.line, recording.ErrAmbiguous, fmt.Sprintf("a column is written as numbers in some rows and as clock times in others (%q)", short(words(r.text))), "export it again with one form of time")
+}
+
+// alien says whether a cell is a clock time in a column of numbers or the
+// other way round: the row that holds it is no row of samples.
+func (lay *layout) alien(c int, k kind) bool {
+	return k == clock && !lay.clock[c] || k == number && lay.clock[c]
+}
+
 // isData says whether a row reads as samples: something in a core column, no
 // other text there, and not a name with its value.
 func (lay *layout) isData(kinds []kind) bool {
@@ -192,7 +221,7 @@ func (lay *layout) isData(kinds []kind) bool {
 			}
 			continue
 		}
-		if k == prose {
+		if k == prose || lay.alien(c, k) {
 			return false
 		}
 		any = any || k.holds()
@@ -232,7 +261,9 @@ func (f *file) findStart(lay *layout, p, line int) error {
 				}
 				if first && good*2 > seen || seen == 0 {
 					lay.start, lay.line = p, line
-					f.stepBack(lay)
+					if err := f.stepBack(lay); err != nil {
+						return err
+					}
 					if stray > 0 {
 						return f.fault(stray, recording.ErrAmbiguous, "a row of numbers stands alone before the samples", fmt.Sprintf("say how many rows to leave out: [takes.NAME.csv] skip = %d", line-1))
 					}
@@ -255,17 +286,27 @@ func (f *file) findStart(lay *layout, p, line int) error {
 
 // stepBack takes in rows right before the first row of samples that begin
 // with a number or time in the first column and are as wide, yet hold a bad
-// cell: they are samples too.
-func (f *file) stepBack(lay *layout) {
+// cell: they are samples too. One of another width is refused.
+func (f *file) stepBack(lay *layout) error {
 	for len(lay.pre) > 0 {
 		r := lay.pre[len(lay.pre)-1]
 		buf, kinds := lay.profile(r.text, nil, nil)
-		if lay.width < 2 || len(buf) != lay.width || kinds[lay.first] != number && kinds[lay.first] != clock {
-			return
+		if lay.width < 2 || len(buf) <= lay.first || kinds[lay.first] != number && kinds[lay.first] != clock {
+			return nil
+		}
+		if len(buf) > lay.width {
+			return f.wideRow(lay, r.line, r.text)
+		}
+		if lay.otherClock(kinds) {
+			return f.twoClocks(r)
+		}
+		if len(buf) < lay.width {
+			return nil
 		}
 		lay.pre = lay.pre[:len(lay.pre)-1]
 		lay.start, lay.line = r.pos, r.line
 	}
+	return nil
 }
 
 // filled says whether a row holds more than separators.

@@ -13,6 +13,7 @@ type layout struct {
 	style
 	width int    // cells of a row of samples, trailing blanks included
 	core  []bool // columns that hold numbers or clock times in most rows
+	clock []bool // of these, the ones with clock times
 	first int    // the leftmost of them
 	start int    // position of the first row of samples
 	line  int    // its line, from 1

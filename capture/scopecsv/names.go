@@ -217,9 +217,12 @@ func (f *file) isUnits(lay *layout, cells []string, numeric []bool) bool {
 		if t == "" || c >= len(numeric) || !numeric[c] {
 			continue
 		}
+		if c > 0 && !numeric[c-1] && settingWord(cells[c-1]) {
+			return false
+		}
 		if _, _, _, ok := unitsCell(t); ok {
 			n++
-		} else if !indexWord(t) {
+		} else if !indexWord(t) && !(lay.clock[c] && timeWord(t)) {
 			return false
 		}
 	}
@@ -234,6 +237,9 @@ func (f *file) isNames(lay *layout, cells []string, numeric []bool, units, marke
 	for c, t := range cells {
 		if t == "" || c >= len(numeric) || !numeric[c] {
 			continue
+		}
+		if c > 0 && !numeric[c-1] && settingWord(cells[c-1]) {
+			return false
 		}
 		filled++
 		over = append(over, t)
@@ -252,11 +258,13 @@ func (f *file) isNames(lay *layout, cells []string, numeric []bool, units, marke
 	}
 	// "Vertical Units,V" before two columns is a setting, not a header; and so
 	// is a setting whose name is known.
-	if filled == 2 {
-		_, _, _, a := unitsCell(over[0])
-		_, _, _, b := unitsCell(over[1])
-		b = b && !units
-		if b && !a && !timeWord(over[0]) || settingWord(over[0]) && !timeWord(over[0]) && !indexWord(over[0]) && over[0] != "Source" {
+	if filled >= 2 && !timeWord(over[0]) && !indexWord(over[0]) {
+		bare := !units // all names but the first are units
+		for _, t := range over[1:] {
+			_, _, _, ok := unitsCell(t)
+			bare = bare && ok
+		}
+		if _, _, _, ok := unitsCell(over[0]); bare && !ok || settingWord(over[0]) && over[0] != "Source" {
 			return false
 		}
 	}
@@ -306,12 +314,13 @@ func (f *file) misfit(lay *layout, r row, numeric []bool) error {
 		}
 	}
 	key, value := keyValue(r.text, lay.sep)
-	setting := settingWord(key) || filled == 2 && value != "" && lay.read([]byte(value)).kind == number
+	kind, _ := settingOf(key)
+	setting := kind != noSetting && (kind != otherSetting || filled <= 2) || filled == 2 && value != "" && lay.read([]byte(value)).kind == number
 	timed := len(cells) > 0 && timeWord(words(trimmed(bytes.TrimLeft(cells[0], commentMarks))))
 	if setting && !timed || filled == 0 || text < filled {
 		return nil
 	}
-	if hasUnit(t) || timed || filled > 1 && filled == text && lay.sep == ',' && count > filled && count%filled == 0 {
+	if hasUnit(t) || timed || filled > 1 && filled == text && count > filled {
 		return f.fault(r.line, recording.ErrAmbiguous,
 			fmt.Sprintf("the header %q has %d names, the rows below have %d columns of numbers", short(t), filled, count),
 			`say how the file is written: [takes.NAME.csv] separator, decimal or skip`)

@@ -39,6 +39,12 @@ func (a *assembly) readTime() error {
 	case a.set.timeUnit.text != "":
 		f, from = a.set.timeUnit.v, fmt.Sprintf("%q, line %d", a.set.timeUnit.key, a.set.timeUnit.line)
 	}
+	if from == "no unit stated" && a.opt.RateHz == 0 {
+		var err error
+		if f, from, err = a.epoch(); err != nil {
+			return err
+		}
+	}
 	if f != 1 {
 		for i, v := range a.stamp {
 			a.stamp[i] = scaled(v, f)
@@ -52,6 +58,42 @@ func (a *assembly) readTime() error {
 	a.assume("time from %s (%s), in %s (%s)", a.title(a.time), a.how0, unitName(f), from)
 	a.turn()
 	return nil
+}
+
+// epoch looks at unit-less stamps too large to be seconds of a record: counts
+// of ms, us or ns since 1970 are told by their size (seconds since 1970 are
+// below 1e10 until the year 2286), days of a spreadsheet's calendar are asked
+// about, since seconds may look the same.
+func (a *assembly) epoch() (f float64, from string, err error) {
+	first, last := math.NaN(), math.NaN()
+	for _, v := range a.stamp {
+		if v == v {
+			if first != first {
+				first = v
+			}
+			last = v
+		}
+	}
+	lo := math.Min(math.Abs(first), math.Abs(last))
+	for _, u := range []struct {
+		from, f float64
+		name    string
+	}{{1e17, 1e-9, "ns"}, {1e14, 1e-6, "us"}, {1e11, 1e-3, "ms"}} {
+		if lo >= u.from && lo < u.from*1e3 {
+			return u.f, "its size: " + u.name + " since 1970", nil
+		}
+	}
+	step := math.Abs(last-first) / float64(max(1, len(a.stamp)-1))
+	if lo > 20000 && lo < 80000 && step < 0.5 && step > 0 {
+		for _, s := range a.set.interval {
+			if math.Abs(s.v-step) < 0.01*step {
+				return 1, "no unit stated", nil
+			}
+		}
+		return 0, "", a.fault(a.lay.line, recording.ErrAmbiguous, fmt.Sprintf("%s begins at %g: seconds, or the days of a spreadsheet's calendar", a.title(a.time), first),
+			`say [takes.NAME.csv] time_unit = "s", or the rate`)
+	}
+	return 1, "no unit stated", nil
 }
 
 func unitName(f float64) string {
@@ -92,6 +134,15 @@ func (a *assembly) readClock(k *column) error {
 			from += fmt.Sprintf(" and the dates of %s", a.title(c))
 		}
 	}
+	q := k.q
+	if a.millis >= 0 {
+		ms := &a.t.col[a.millis]
+		for i, v := range ms.v {
+			a.stamp[i] += v / 1000
+		}
+		q = 1e-3 * pow10(ms.last)
+		from += fmt.Sprintf(" and the milliseconds of %s", a.title(a.millis))
+	}
 	nights := 0.0
 	prev := math.NaN()
 	for i, v := range a.stamp {
@@ -114,7 +165,6 @@ func (a *assembly) readClock(k *column) error {
 			break
 		}
 	}
-	q := k.q
 	a.grain = func(float64) float64 { return q }
 	for i := range a.stamp {
 		a.stamp[i] -= first

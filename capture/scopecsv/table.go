@@ -41,6 +41,7 @@ type assembly struct {
 
 	time       int                   // column of time; -1: none
 	index      int                   // column that counts rows; -1: none
+	millis     int                   // column of milliseconds beside a clock of whole seconds; -1: none
 	how0       string                // how the time column was found
 	maybeCount bool                  // the time column may be a count
 	stamp      []float64             // s, one a row; nil without time column
@@ -62,7 +63,7 @@ func (a *assembly) flag(code string, channel int, from, to *float64, format stri
 }
 
 func (f *file) assemble(lay *layout, t *body, size int64) (*table, error) {
-	a := &assembly{file: f, lay: lay, t: t, time: -1, index: -1, rows: t.n}
+	a := &assembly{file: f, lay: lay, t: t, time: -1, index: -1, millis: -1, rows: t.n}
 	a.info = recording.Info{Format: "scope CSV", Kind: recording.Scope, Bytes: size, Frames: int64(t.n)}
 	numeric := a.holdsNumbers()
 	var err error

@@ -49,7 +49,7 @@ var exactUnits = map[string]unitWord{
 var plainUnits = map[string]unitWord{
 	"volt": {volts, 1}, "volts": {volts, 1}, "millivolt": {volts, 1e-3}, "millivolts": {volts, 1e-3}, "microvolt": {volts, 1e-6}, "microvolts": {volts, 1e-6},
 	"mvolt": {volts, 1e-3}, "mvolts": {volts, 1e-3}, "uvolt": {volts, 1e-6}, "uvolts": {volts, 1e-6}, "kilovolt": {volts, 1e3}, "kilovolts": {volts, 1e3},
-	"vdc": {volts, 1}, "v dc": {volts, 1}, "vac": {volts, 1}, "mvdc": {volts, 1e-3},
+	"dcv": {volts, 1}, "dc v": {volts, 1}, "dcmv": {volts, 1e-3}, "dc mv": {volts, 1e-3}, "mv dc": {volts, 1e-3}, "vdc": {volts, 1}, "v dc": {volts, 1}, "vac": {volts, 1}, "mvdc": {volts, 1e-3},
 	"sec": {seconds, 1}, "secs": {seconds, 1}, "second": {seconds, 1}, "seconds": {seconds, 1}, "sekunde": {seconds, 1}, "sekunden": {seconds, 1}, "secondes": {seconds, 1},
 	"segundos": {seconds, 1}, "secondi": {seconds, 1}, "millisecond": {seconds, 1e-3}, "milliseconds": {seconds, 1e-3}, "msec": {seconds, 1e-3}, "msecs": {seconds, 1e-3}, "millis": {seconds, 1e-3},
 	"microsecond": {seconds, 1e-6}, "microseconds": {seconds, 1e-6}, "usec": {seconds, 1e-6}, "usecs": {seconds, 1e-6}, "micros": {seconds, 1e-6},
@@ -98,6 +98,14 @@ func readHeader(text string) header {
 		h.unit, h.q, h.f, h.from = t, q, f, "its header"
 		return h
 	}
+	if t == "V" || strings.HasPrefix(t, "V(") || strings.HasPrefix(t, "v(") {
+		h.unit, h.q, h.f, h.from = "V", volts, 1, "its header" // V(node), as circuit simulators write
+		return h
+	}
+	if strings.HasPrefix(t, "I(") {
+		h.unit, h.q, h.f, h.from = "A", other, 1, "its header"
+		return h
+	}
 	if name, in, ok := bracketed(t); ok {
 		q, f := unitOf(in)
 		if q == unknown && looksUnit(in) {
@@ -105,6 +113,22 @@ func readHeader(text string) header {
 		}
 		if q != unknown {
 			h.name, h.unit, h.q, h.f, h.from = name, in, q, f, "its header"
+			return h
+		}
+	}
+	if name, in, ok := bracketInside(t); ok {
+		h.name, h.unit, h.from = name, in, "its header"
+		h.q, h.f = unitOf(in)
+		return h
+	}
+	// A unit right behind a channel's number: CH1V, CH2mV.
+	if n := len(t) - 1; n > 1 && t[n] == 'V' {
+		if t[n-1] == 'm' || t[n-1] == 'u' {
+			n--
+		}
+		if t[n-1] >= '0' && t[n-1] <= '9' && channelWord(strings.ToLower(t[:n])) {
+			h.unit, h.from = t[n:], "its header"
+			h.q, h.f = unitOf(t[n:])
 			return h
 		}
 	}
@@ -147,6 +171,25 @@ func bracketed(t string) (name, in string, ok bool) {
 	return "", "", false
 }
 
+// bracketInside finds a unit of time or volts in brackets within a name:
+// "Time (ms) - input 1".
+func bracketInside(t string) (name, in string, ok bool) {
+	for i := 0; i < len(t); i++ {
+		if t[i] != '(' && t[i] != '[' {
+			continue
+		}
+		j := strings.IndexAny(t[i:], ")]")
+		if j < 0 {
+			break
+		}
+		in = strings.TrimSpace(t[i+1 : i+j])
+		if q, _ := unitOf(in); q == seconds || q == volts {
+			return strings.Join(strings.Fields(t[:i]+" "+t[i+j+1:]), " "), in, true
+		}
+	}
+	return "", "", false
+}
+
 // looksUnit says whether an unknown word in brackets has the form of a unit
 // rather than of a remark.
 func looksUnit(w string) bool {
@@ -154,16 +197,20 @@ func looksUnit(w string) bool {
 		return false
 	}
 	switch strings.ToUpper(w) {
-	case "AC", "DC", "AVG", "MIN", "MAX", "REL", "ABS", "IN", "OUT", "L", "R", "+", "-", "X", "Y", "REF", "MATH", "FFT", "LEFT", "RIGHT", "CALC", "HI", "LO", "TRIG", "GND", "P", "N", "POS", "NEG", "INPUT", "OUTPUT":
+	case "RELATIVE", "ELAPSED", "LOCAL", "UTC", "GMT", "ABSOLUTE", "TIME", "SAMPLES", "PROBE", "TIP", "RING", "HOT", "COLD", "RED", "BLUE", "SCREEN", "AC", "DC", "AVG", "MIN", "MAX", "REL", "ABS", "IN", "OUT", "L", "R", "+", "-", "X", "Y", "REF", "MATH", "FFT", "LEFT", "RIGHT", "CALC", "HI", "LO", "TRIG", "GND", "P", "N", "POS", "NEG", "INPUT", "OUTPUT":
 		return false
 	}
 	if strings.HasPrefix(strings.ToUpper(w), "CH") {
 		return false
 	}
 	letters := false
-	for _, r := range w {
+	for i, r := range w {
 		switch {
-		case r >= '0' && r <= '9', r == '/', r == '^', r == '*', r == '.':
+		case r >= '0' && r <= '9':
+			if i > 0 && !strings.ContainsAny(w[:i], "/^*.") && w[i-1] > '9' && len(w) > i+1 {
+				return false
+			}
+		case r == '/', r == '^', r == '*', r == '.':
 		case r >= 'a' && r <= 'z', r >= 'A' && r <= 'Z', r > 0x7f, r == '%', r == '?':
 			letters = true
 		default:

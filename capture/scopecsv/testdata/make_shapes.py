@@ -281,7 +281,7 @@ ok("text-between-rows", "Time,CH1\n" + rows(t6[:30], a[:30]) + "operator touched
 ok("averaged", "Acquisition Mode,Average\nTime,CH1\n" + rows(t6, a), 1e4, [A], frames=N, flags=["averaged"])
 
 # --- refused -----------------------------------------------------------------
-bad("decimal-comma-in-comma-file", "Time,CH1\n" + rows(dc(t6), dc(a)), 1, "names")
+bad("decimal-comma-in-comma-file", "Time,CH1\n" + rows(dc(t6), dc(a)), 2, "decimal")
 bad("decimal-comma-in-comma-file-bare", rows(dc(t6), dc(a)), 1, "decimal")
 bad("both-decimal-marks", "Time;CH1\n" + rows(t6, dc(a), sep=";"), 2, "decimal")
 bad("comma-thousands-or-decimals", "Time\tCH1\n" + rows(["%d" % i for i in range(N)], ["1,%03d" % (500 + i) for i in range(N)], sep="\t"), 2, "thousands")
@@ -306,6 +306,62 @@ bad("prose", "Dear colleague,\nthe preamp hums.\nRegards\n", 1, "no table", "for
 bad("time-alone", "Time (s)\n" + rows(t6), 2, "no column of values", "format")
 bad("text-mixed-in", "Time,CH1\n" + "".join("%s,%s\n" % (t6[i], a[i] if i % 3 else "12-Feb") for i in range(N)), 2, "mixes", "format")
 bad("suffix-lost-on-some", "Time,CH1\n" + "".join("%s,%s\n" % (t6[i], suf[i] if i % 4 else suf[i][:-2]) for i in range(N)), 2, "unit behind")
+
+# --- whole exports, as instruments lay them out ------------------------------
+ok("export-values-under-settings", "Format,1.0\nMemory Length,%d\nTrigger Level,0.0\nSource,CH1\nProbe,10.000E+00\nVertical Units,V\nVertical Scale,1.000E+00\n"
+   "Horizontal Units,S\nHorizontal Scale,5.000E-04\nHorizontal Mode,Main\nSampling Period,1.000E-04\nFirmware,V1.2\nTime,01-Dec-26 12:00:00\nMode,Fast\nWaveform Data,\n" % N
+   + rows(a, tail=","), 1e4, [nm(A, "Waveform Data")], frames=N)
+ok("export-named-settings-per-channel", "Record Length,Analog:%d\nSample Interval,Analog:0.0001000000\nVertical Units,CH1:V,CH2:V\nVertical Scale,CH1:0.5,CH2:0.2\nProbe Attenuation,CH1:1,CH2:10\n"
+   "Horizontal Units,S\nModel,B4\n\n\nSource,CH1,CH2\nSecond,Volt,Volt\n" % N + rows(t6, a, b), 1e4, [A, B], frames=N)
+ok("export-segments-numbered", "Bench take,17,Waveform\nSegments,2,SegmentSize,30\nSegment,TrigTime,TimeSinceSegment1\n#1,01-Dec-2026 12:00:00,0\n#2,01-Dec-2026 12:00:07,7.1\nTime,Ampl\n"
+   + rows(t6[:30], a[:30]) + rows(t6[:30], a[30:]), 1e4, [nm(A, "Ampl")], frames=N, flags=["gap"], joints=[30])
+ok("export-header-with-start", "CH1V,t0 = -3.0e-03,tInc = 1.0e-04,\n" + rows(a, tail=",,,"), 1e4, [nm(A, "CH1V")], start=-0.003, frames=N)
+ok("export-hash-settings-values", "#CHANNEL:CH1\n#CLOCK=100.0uS\n#SIZE=%d\n#UNITS:mV\n  \n" % N + "".join("  %s\n" % x for x in a), 1e4, [chan("", a, 1e-3)], frames=N)
+ok("export-comment-semicolons", "; recorded on the bench\n; Channels (1/1): A1\n; Samplerate: 10 kHz\nTime [ms],A1 [V]\n" + rows(f([i * 0.1 for i in range(N)], 1), a), 1e4, [nm(A, "A1")], frames=N)
+ok("export-hash-block", "#Oscilloscope Acquisition\n#Device Name: bench\n#Serial Number: 0017\n#Date Time: 2026-12-01 12:00:00.123\n#Sample rate: 10000Hz\n#Samples: %d\n#Trigger: Source: Channel 1 Type: Edge\n"
+   "#Channel 1\n#Range: 5 V/div\n#Offset: 0 V\n#Attenuation: 1 X\n\nTime (s),Channel 1 (V)\n" % N + rows(t6, a), 1e4, [nm(A, "Channel 1")], frames=N)
+ok("export-quoted-block-settings", '"Model Name","B4"\n"BlockNumber",1\n"TraceName ","CH1"\n"BlockSize",%d\n"VUnit","V"\n"SampleRate",10000\n"HResolution",1.0000000E-04\n"HOffset",-3.0000000E-03\n"HUnit","s"\n' % N
+   + "".join(" ,%s\n" % x for x in a), 1e4, [nm(A, "")], start=-0.003, frames=N)
+ok("export-name-with-unit-inside", "Time (ms) - Voltage_1,Amplitude (mV) - Voltage_1\n" + rows(f([i * 0.1 for i in range(N)], 1), a), 1e4, [chan("Amplitude - Voltage_1", a, 1e-3)], frames=N)
+ok("export-volt-capitals", "x-axis,1 (VOLT),2 (VOLT)\n" + rows(t6, a, b), 1e4, [nm(A, "1"), nm(B, "2")], frames=N)
+ok("export-simulator", "time\tV(out)\tV(n001)\n" + rows(e([i * 1e-4 for i in range(N)], 9), a, b, sep="\t"), 1e4, [nm(A, "V(out)"), nm(B, "V(n001)")], frames=N)
+ok("export-clock-and-ms", "NUM,Date&Time,ms,CH1,Alarm\nNO.,Time,ms,V,A1234\n" + "".join("%d,2026/12/01 12:00:%02d,%4d,%s,LLLL\n" % (i + 1, i // 5, i % 5 * 200, a[i]) for i in range(N)),
+   5, [A], frames=N)
+ok("export-unit-column", "Date;Time;Value;Unit\n" + "".join("2026-12-01;12:00:%04.1f;%s;mV\n" % (i * 0.5, a[i]) for i in range(N)), 2, [chan("Value", a, 1e-3)], frames=N)
+bad("export-unit-column-changes", "Time;Value;Unit\n" + "".join("%s;%s;%s\n" % (t6[i], a[i], "mV" if i < 30 else "V") for i in range(N)), 32, "changes")
+ok("export-blank-unit-cells", "".join("%s s %s mV\n" % r for r in zip(t6, a)), 1e4, [chan("", a, 1e-3)], frames=N)
+ok("export-spaced-suffix", "Time,CH1\n" + "".join("%s s,%s V DC\n" % r for r in zip(t6, a)), 1e4, [A], frames=N)
+ok("export-epoch-ms", "timestamp,CH1\n" + "".join("%d,%s\n" % (1796126400000 + 20 * i, a[i]) for i in range(N)), 50, [A], start=1796126400.0, frames=N)
+bad("export-spreadsheet-days", "Date/Time,CH1\n" + "".join("%.9f,%s\n" % (46357.5 + i / 86400, a[i]) for i in range(N)), 2, "calendar")
+ok("export-arrow-clock", "".join("12:00:%06.3f -> %s\n" % (i * 0.02, a[i]) for i in range(N)), 50, [nm(A, "")], frames=N)
+ok("export-peak-detect-names", "TIME,CH1,CH1 Peak Detect\n" + rows(t6, a, b), 1e4, [A, nm(B, "CH1 Peak Detect")], frames=N, flags=["peak-detect"])
+ok("export-units-above-names", "s,mV\nTime,CH1\n" + rows(t6, a), 1e4, [chan("CH1", a, 1e-3)], frames=N)
+ok("export-iso-zone", "Time,CH1\n" + "".join("2026-12-01T12:00:%09.6f+01:00,%s\n" % (i * 1e-4, a[i]) for i in range(N)), 1e4, [A], frames=N)
+ok("export-am-pm", "Time,CH1\n" + "".join("12/1/2026 %d:%02d:%02d %s,%s\n" % (11 if i < 20 else 12, (59 if i < 20 else 0), (40 + i) % 60, "AM" if i < 20 else "PM", a[i]) for i in range(N)), 1, [A], frames=N)
+ok("export-minutes-seconds", "Time,CH1\n" + "".join("%02d:%04.1f,%s\n" % (i * 5 // 60, i * 5 % 60, a[i]) for i in range(N)), 0.2, [A], frames=N)
+bad("export-rows-across", "\n".join(",".join(["CH%d" % c] + a) for c in (1, 2)) + "\n", 0, "row", "format")
+bad("export-rows-across-bare", "\n".join(",".join(a) for c in (1, 2)) + "\n", 1, "along the rows", "unsupported")
+bad("export-signs-apart", "".join("%s %s %s\n" % (t6[i], "-" if a[i][0] == "-" else "+", a[i].strip("-")) for i in range(N)), 1, "signs apart", "format")
+bad("export-burst-rows", "trigger,stamp,channel,rate,data\n" + "".join("%d,%d,1,1000,%s\n" % (i, i * 8, ",".join(a[i * 5:i * 5 + 5])) for i in range(12)), 1, "names")
+bad("export-first-row-longer", "Time,CH1\n" + t6[0] + "," + a[0] + ",CH1,start\n" + rows(t6[1:], a[1:]), 2, "4 cells")
+bad("export-time-two-forms", "Time,CH1\n" + "".join("%s,%s\n" % ("%.1f" % (i * 1.5) if i < 40 else "%d:%04.1f" % divmod(i * 1.5, 60), a[i]) for i in range(N)), 42, "clock times")
+bad("export-time-two-forms-first", "Time,CH1\n" + "".join("%s,%s\n" % ("%.1f" % (i * 4) if i < 15 else "%d:%04.1f" % divmod(i * 4, 60), a[i]) for i in range(N)), 16, "clock times")
+ok("export-shuffled-columns", "CH1 (V),CH2 (V),Time (s)\n" + rows(a, b, t6), 1e4, [A, B], frames=N)
+ok("export-sep-line", "sep=;\nTime;CH1\n" + rows(t6, a, sep=";"), 1e4, [A], frames=N)
+ok("export-grouped-european", "Zeit (s);U (mV)\n" + "".join("%s;%s\n" % (t6[i].replace(".", ","), "{:,.2f}".format(1500 * float(a[i])).translate(str.maketrans(",.", ".,"))) for i in range(N)),
+   1e4, [chan("U", ["%.2f" % (1500 * float(x)) for x in a], 1e-3)], frames=N)
+ok("export-double-spaced", "Time,CH1\n\n" + "\n\n".join("%s,%s" % r for r in zip(t6, a)) + "\n\n", 1e4, [A], frames=N)
+ok("export-values-double-spaced", "Sample rate: 10 kHz\n" + "\n\n".join(a) + "\n", 1e4, [nm(A, "")], frames=N)
+ok("export-values-blank-row", "Sample rate: 10 kHz\n" + "\n".join(a[:30]) + "\n\n" + "\n".join(a[30:]) + "\n", 1e4, [nm(A, "")], frames=N, flags=["gap"], joints=[30])
+ok("export-time-minutes", "Time (min),CH1 (V)\n" + rows(f([i * 0.5 for i in range(N)], 1), a), 1 / 30, [A], frames=N)
+ok("export-stated-float32", "Sample Interval,9.99999975E-05\nTime,CH1\n" + rows(t6, a), 1e4, [A], frames=N, tol=1e-6)
+ok("export-unix-seconds", "time,CH1\n" + "".join("%.3f,%s\n" % (1796126400 + 0.02 * i, a[i]) for i in range(N)), 50, [A], start=1796126400.0, frames=N)
+ok("export-one-row", "Time,CH1\n0.0,1.5\n", None, [chan("CH1", ["1.5"])], frames=1, flags=["rate-doubt"])
+ok("export-two-rows", "Time,CH1\n0.0,1.5\n0.1,2.5\n", 10, [chan("CH1", ["1.5", "2.5"])], frames=2)
+ok("export-bad-first-row", "Time,CH1\n" + t6[0] + ",####\n" + rows(t6[1:], a[1:]), 1e4, [chan("CH1", a[1:])], frames=N, flags=["overrange"])
+ok("export-word-first-row", "Time,CH1\n" + t6[0] + ",oops\n" + rows(t6[1:], a[1:]), 1e4, [chan("CH1", a[1:])], frames=N, flags=["overrange"])
+ok("export-damaged-time", "Time,CH1\n" + rows(holes(t6, {20: "0.0o2"}), a), 1e4, [A], frames=N, flags=["overrange"])
+ok("export-index-gap", "Sample,CH1 (V)\n" + "".join("%d,%s\n" % (i, a[i]) for i in range(N) if i != 31) + "Sample rate,10000\n", 1e4, [chan("CH1", a[:31] + a[32:])], frames=N - 1, flags=["gap"], joints=[31])
 
 json.dump(truth, open(os.path.join(here, "shapes.json"), "w"), indent=1, sort_keys=True)
 print(len(truth), "shapes")
