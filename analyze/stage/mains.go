@@ -50,11 +50,21 @@ func findComb(v *Survey, nominalHz, durationS float64, skip func(hz float64) boo
 				rival = c
 			}
 			best.Rival = &rival
-		case c.Score > best.Score && (i < 2 || best.Score == 0):
+		case c.Score > best.Score && (i < 2 || best.Score == 0 && c.credible(3)):
 			best = c
 		}
 	}
 	return best
+}
+
+// credible: enough orders stand out, a low one among them, to take the comb
+// for a supply rather than for one chance line.
+func (c comb) credible(orders int) bool {
+	low := false
+	for _, o := range c.Orders {
+		low = low || o <= 2
+	}
+	return len(c.Orders) >= orders && low
 }
 
 // related: both combs live on the same peaks (300 Hz is 6 x 50 and 5 x 60).

@@ -101,7 +101,7 @@ func followTone(p *analyze.Pass, coarse float64, sigs []*analyze.Signal) (*Tone,
 		}
 	}
 	t.Track = sinefit.Join(search.Len(), sets...)
-	t.Hz = t.Track.Nu * search.RateHz
+	t.Hz = t.Track.MeanNu() * search.RateHz
 	t.UHz = t.Track.UNu * search.RateHz
 	t.Periods = t.Hz * T
 	t.Few = t.Periods < 5
@@ -188,6 +188,9 @@ func coarseTone(p *analyze.Pass, atHz float64, s *analyze.Signal, v *Survey) (fl
 		lo = 0
 	}
 	mains := findComb(v, mainsNominal(p), T, func(float64) bool { return false })
+	if mainsNominal(p) == 0 && !mains.credible(1) {
+		mains.Hz = 0 // a lone line at a high multiple is no supply
+	}
 	tol := v.ToleranceHz()
 	best, ok := v.StrongestIn(math.Max(lo, 1.2/T), hi, func(q spectrum.Peak) bool {
 		d, _ := NearMains(q.Hz, mains.Hz, 5)

@@ -56,6 +56,18 @@ func (t *Track) Turns(i float64) float64 {
 	return base + d
 }
 
+// MeanNu is the mean frequency over the span: the phase gained from its first
+// to its last sample. It is Nu for a rigid track.
+func (t *Track) MeanNu() float64 {
+	if t.Rigid || t.Len < 2 {
+		return t.Nu
+	}
+	last := float64(t.Len - 1)
+	a, _ := t.deviation(0)
+	b, _ := t.deviation(last)
+	return t.Nu + (b-a)/last
+}
+
 // OrderTurns is order times the phase, reduced.
 func (t *Track) OrderTurns(order, i float64) float64 {
 	base := Turns(order*t.Nu, i-t.mid())
