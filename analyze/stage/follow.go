@@ -109,7 +109,7 @@ func newFollowed(p *analyze.Pass, s *analyze.Signal, toneHz float64, weak bool) 
 		y := buf[:s.Read(buf[:n], b.From)]
 		// Start where the block before ended, unless that led astray.
 		r, err := sinefit.Refine(y, start, 0.6/float64(n))
-		if err == nil && !r.Settled {
+		if err == nil && toneAt >= 0 && !r.Settled[toneAt] {
 			r, err = sinefit.Refine(y, combs, 0.6/float64(n))
 		}
 		if err != nil {
@@ -117,11 +117,11 @@ func newFollowed(p *analyze.Pass, s *analyze.Signal, toneHz float64, weak bool) 
 			break
 		}
 		for g := range start {
-			if math.Abs(r.Nu[g]-combs[g].Nu)*float64(n) < 2 {
+			if r.Settled[g] && math.Abs(r.Nu[g]-combs[g].Nu)*float64(n) < 2 {
 				start[g].Nu = r.Nu[g]
 			}
 		}
-		f.Settled = f.Settled && r.Settled
+		f.Settled = f.Settled && (toneAt < 0 || r.Settled[toneAt])
 		f.Cond = math.Max(f.Cond, r.Cond)
 		free := float64(n - 2*len(r.Z) - 1 - len(combs))
 		sigma2 := r.SSR / math.Max(free, 1)

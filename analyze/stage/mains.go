@@ -54,7 +54,21 @@ func findComb(v *Survey, nominalHz, durationS float64, skip func(hz float64) boo
 			best = c
 		}
 	}
+	if nominalHz > 0 || len(best.Orders) > 0 {
+		best.settle(v, nearest(tries, best.Hz), skip)
+	}
 	return best
+}
+
+// nearest is the entry of list that hz lies closest to.
+func nearest(list []float64, hz float64) float64 {
+	out := list[0]
+	for _, f := range list {
+		if math.Abs(f-hz) < math.Abs(out-hz) {
+			out = f
+		}
+	}
+	return out
 }
 
 // credible: enough orders stand out, a low one among them, to take the comb

@@ -126,7 +126,7 @@ type Refined struct {
 	Nu      []float64 // base frequency of each comb
 	SSR     float64   // sum of squared residuals, never under the rounding of the sums
 	Steps   int
-	Settled bool // the last steps were far below the noise, or below rounding
+	Settled []bool // by comb: its last step was far below the noise, or below rounding
 }
 
 // Refine is the four-parameter fit of IEEE Std 1057 widened to several combs,
@@ -138,7 +138,8 @@ type Refined struct {
 // when the block holds few periods, never long. Steps end when all are below
 // a ten thousandth of the Cramer-Rao bound, or no longer shrink for rounding. A
 // comb that leaves its start by more than limit (cycles per sample) is put
-// back there and held.
+// back there and held; one that has not come to rest after 16 steps (a line
+// that is hardly there) is left where it is.
 func Refine(y []float64, combs []Comb, limit float64) (Refined, error) {
 	n := float64(len(y))
 	var lines []float64
@@ -147,7 +148,7 @@ func Refine(y []float64, combs []Comb, limit float64) (Refined, error) {
 	}
 	S := make([]complex128, len(lines))
 	T := make([]complex128, len(lines))
-	out := Refined{Nu: make([]float64, len(combs))}
+	out := Refined{Nu: make([]float64, len(combs)), Settled: make([]bool, len(combs))}
 	held := make([]bool, len(combs))
 	last := make([]float64, len(combs))
 	for g, c := range combs {
@@ -158,6 +159,7 @@ func Refine(y []float64, combs []Comb, limit float64) (Refined, error) {
 	for _, v := range y {
 		energy += v * v
 	}
+	done := false
 	for out.Steps = 1; ; out.Steps++ {
 		i := 0
 		for g, c := range combs {
@@ -177,11 +179,11 @@ func Refine(y []float64, combs []Comb, limit float64) (Refined, error) {
 			left -= real(z)*real(S[k]) + imag(z)*imag(S[k])
 		}
 		out.SSR = math.Max(left, 1e-15*energy)
-		if out.Settled || out.Steps > 40 {
+		if done || out.Steps > 40 {
 			return out, nil
 		}
 		takeModel(T, lines, out.Fit)
-		out.Settled = true
+		done = true
 		first := 0
 		for g, c := range combs {
 			// Residual against the derivative of the model by nu:
@@ -194,23 +196,29 @@ func Refine(y []float64, combs []Comb, limit float64) (Refined, error) {
 				curve += 2 * math.Pi * math.Pi * o * o * (a*a + b*b)
 			}
 			first += len(c.Orders)
-			if held[g] || curve == 0 {
+			if held[g] || curve == 0 || out.Steps > 16 && out.Settled[g] {
 				continue
 			}
 			curve *= n * (n*n - 1) / 12
 			step := grad / curve
 			size := math.Abs(step)
 			bound := math.Sqrt(out.SSR / n / curve) // Cramer-Rao, white noise
-			if size*n < 1e-12 || (size*n < 1e-7 && size >= 0.7*last[g]) {
+			out.Settled[g] = size*n < 1e-12 || (size*n < 1e-7 && size >= 0.7*last[g])
+			if out.Settled[g] {
 				continue
 			}
 			if size < 1e-4*bound { // the amplitudes no longer notice
 				out.Nu[g] += step
+				out.Settled[g] = true
+				continue
+			}
+			if out.Steps >= 16 && g > 0 {
+				held[g] = true
 				continue
 			}
 			last[g] = size
 			out.Nu[g] += step
-			out.Settled = false
+			done = false
 			if math.Abs(out.Nu[g]-c.Nu) > limit || out.Nu[g] <= 0 {
 				out.Nu[g], held[g] = c.Nu, true
 			}

@@ -15,7 +15,7 @@ func TestRefineWorkedExample(t *testing.T) {
 		y[n] = math.Floor(100*(0.5+2*math.Cos(w)+math.Sin(w)+0.02*math.Cos(3*w))+0.5) / 100
 	}
 	r, err := Refine(y, []Comb{{123.0 / 10000, []float64{1}, true}}, 1.0/1000)
-	if err != nil || !r.Settled {
+	if err != nil || !r.Settled[0] {
 		t.Fatal(err, r.Settled)
 	}
 	near := func(what string, got, want, tol float64) {
