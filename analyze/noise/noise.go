@@ -28,7 +28,7 @@ var (
 
 // Measures lists the measures of this package.
 func Measures() []*analyze.Measure {
-	return []*analyze.Measure{noise, noiseDensity, snr}
+	return []*analyze.Measure{noise, noiseDensity, ein, snr}
 }
 
 func spanOf(s *analyze.Signal) []float64 { return []float64{s.StartS, s.StartS + s.DurationS()} }
