@@ -13,7 +13,6 @@ import (
 
 	"benchslip/analyze"
 	"benchslip/analyze/internal/budget"
-	"benchslip/analyze/internal/spectrum"
 	"benchslip/analyze/stage"
 	"benchslip/capture/recording"
 	"benchslip/capture/unit"
@@ -64,21 +63,37 @@ func lines(p *analyze.Pass, s *analyze.Signal, orders int) (*stage.Lines, *analy
 	return l, nil
 }
 
-// ofComb tells a harmonic of strong hum from a test tone: it lies on a mains
-// order, and one of the lowest five orders is stronger. A test tone that lies
-// on an order stands over the hum, or nothing tells the two apart.
+// A line on a mains order passes for hum while the comb's other orders hold
+// over 1/400 of its power (26 dB): hum of one order alone is rare, a test tone
+// that shy of the hum more so. A line without company counts as hum only when
+// it is weak, under 300 times the noise of one resolution bandwidth.
+const (
+	company = 400
+	weak    = 300
+)
+
+// ofComb tells a harmonic of hum from a test tone: it lies on a mains order,
+// and has the company of others that are not its own multiples.
 func ofComb(p *analyze.Pass, s *analyze.Signal, tone *stage.Tone) bool {
 	v := stage.SurveyOf(p, s)
 	near := func(hz float64) float64 { return 2*v.ToleranceHz() + 4e-4*hz }
-	if gap, _ := stage.NearMains(tone.Hz, tone.MainsHz, stage.MaxOrder); gap > near(tone.Hz) {
+	gap, order := stage.NearMains(tone.Hz, tone.MainsHz, stage.MaxOrder)
+	top, ok := v.StrongestIn(tone.Hz-near(tone.Hz), tone.Hz+near(tone.Hz), nil)
+	if !ok {
 		return false
 	}
-	top, ok := v.StrongestIn(tone.Hz-near(tone.Hz), tone.Hz+near(tone.Hz), nil)
-	low, found := v.StrongestIn(tone.MainsHz/2, 5.5*tone.MainsHz, func(q spectrum.Peak) bool {
-		gap, _ := stage.NearMains(q.Hz, tone.MainsHz, 5)
-		return gap <= near(q.Hz)
-	})
-	return ok && found && low.Power > top.Power
+	others := 0.0
+	for _, q := range v.Peaks {
+		gap, k := stage.NearMains(q.Hz, tone.MainsHz, stage.MaxOrder)
+		if gap <= near(q.Hz) && k%order != 0 {
+			others += q.Power
+		}
+	}
+	if others > 0 {
+		return gap <= near(tone.Hz) && top.Power < company*others
+	}
+	// Alone, the order's place is known no better than the supply's frequency.
+	return gap <= near(tone.Hz)+0.004*tone.Hz && top.Power < weak*top.Floor*v.RBW()
 }
 
 // comb is a set of mains orders, summed.
