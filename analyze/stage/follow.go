@@ -3,6 +3,7 @@ package stage
 import (
 	"fmt"
 	"math"
+	"slices"
 	"sort"
 
 	"benchslip/analyze"
@@ -69,10 +70,10 @@ func newFollowed(p *analyze.Pass, s *analyze.Signal, toneHz float64, weak bool) 
 		combs = append(combs, c)
 		all = append(all, toneHz)
 	}
-	if len(f.Comb.Orders) > 0 {
+	if orders := append(slices.Clone(f.Comb.Orders), f.Comb.Faint...); len(orders) > 0 {
 		c := sinefit.Comb{Nu: f.MainsHz / rate, Free: true}
-		sort.Ints(f.Comb.Orders)
-		for _, o := range f.Comb.Orders {
+		slices.Sort(orders)
+		for _, o := range orders {
 			c.Orders = append(c.Orders, float64(o))
 			all = append(all, float64(o)*f.MainsHz)
 		}

@@ -17,6 +17,7 @@ const minMainsPeriods = 10
 type comb struct {
 	Hz     float64 // base frequency; 0: none resolvable
 	Orders []int   // orders with a peak of their own in the survey
+	Faint  []int   // others that show at the base frequency
 	Score  float64 // sum over them of dB above the floor, 40 dB at most each
 	Power  float64 // V^2 of those orders
 	Rival  *comb   // a second supply found within 6 dB

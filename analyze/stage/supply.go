@@ -1,6 +1,9 @@
 package stage
 
-import "math"
+import (
+	"math"
+	"slices"
+)
 
 // Where a supply's lines hardly stand out, each alone says little about its
 // frequency; all orders together say more. For independent lines of unknown
@@ -52,6 +55,24 @@ func (c *comb) settle(v *Survey, nominal float64, skip func(hz float64) bool) {
 		at += step * math.Max(-0.5, math.Min(0.5, (l-r)/2/d))
 	}
 	c.Hz = at
+	c.faint(v, skip)
+}
+
+// faint adds the orders that a reading at the found frequency shows, though
+// none makes a peak of its own: they help to place the frequency.
+func (c *comb) faint(v *Survey, skip func(hz float64) bool) {
+	k := math.Max(v.Averages, 1)
+	limit := 1 + 3/math.Sqrt(k) + 4/k
+	for o := 1; o <= searchOrders; o++ {
+		hz := float64(o) * c.Hz
+		j := int(hz/v.StepHz + 0.5)
+		if j < 1 || j+1 >= len(v.S) {
+			return
+		}
+		if !skip(hz) && !slices.Contains(c.Orders, o) && v.S[j] > limit*v.Floor[j] {
+			c.Faint = append(c.Faint, o)
+		}
+	}
 }
 
 // says is the sum over orders of power over noise at the multiples of f.
