@@ -41,13 +41,25 @@ func (a *assembly) holdsNumbers() []bool {
 	if a.t.n >= 10 {
 		for c, is := range numeric {
 			k := a.t.col[c].count
-			if n := k[number] + k[clock]; is && n <= 2 && (k[blank]+k[prose])*5 >= a.t.n*4 {
+			if n := k[number] + k[clock]; is && n <= 2 && (k[blank]+k[prose])*5 >= a.t.n*4 && a.atEnds(c) {
 				numeric[c] = false
 				a.notes = append(a.notes, c)
 			}
 		}
 	}
 	return numeric
+}
+
+// atEnds says whether the values of a column all stand in the first three rows
+// or the last one.
+func (a *assembly) atEnds(c int) bool {
+	v := a.t.col[c].v
+	for i := 3; i < len(v)-1; i++ {
+		if v[i] == v[i] {
+			return false
+		}
+	}
+	return true
 }
 
 // maxBeside is the largest number of rows in which settings stand beside the
@@ -446,7 +458,7 @@ func (a *assembly) checkText(c int, numeric bool) error {
 			return a.fault(k.text, recording.ErrFormat, fmt.Sprintf("%s mixes numbers with text (%q and %d more cells)", a.title(c), short(k.say), k.count[prose]-1), "export the samples as numbers")
 		}
 	}
-	if k.glued > 0 && k.bare > 0 {
+	if k.glued > 0 && k.bare > 0 && k.unit != "" {
 		return a.fault(k.bareAt, recording.ErrAmbiguous, fmt.Sprintf("%s has numbers with a unit behind them and numbers without", a.title(c)), "export it with one fixed unit")
 	}
 	return nil
@@ -469,16 +481,23 @@ func (a *assembly) otherSeparator(text []byte) byte {
 		if s.sep == a.lay.sep {
 			continue
 		}
-		cells := split(text, s.sep, nil)
-		n := 0
-		for _, c := range cells {
-			if sh := shapeOf(c); sh.holds() && sh != markCell && sh != clockCell {
-				n++
-			} else if sh == noNumber {
-				n = -len(cells)
+		numbers, clocks, texts, first := 0, 0, 0, noNumber
+		for i, c := range split(text, s.sep, nil) {
+			sh := shapeOf(c)
+			if i == 0 || first == emptyCell {
+				first = sh
+			}
+			switch sh {
+			case clockCell:
+				clocks++
+			case noNumber:
+				texts++
+			case emptyCell, markCell:
+			default:
+				numbers++
 			}
 		}
-		if n >= 2 {
+		if numbers > 0 && numbers+clocks >= 2 && first != noNumber && (texts == 0 || s.sep != ' ') {
 			return s.sep
 		}
 	}
@@ -774,7 +793,7 @@ func (a *assembly) timeByShape() {
 			return
 		}
 		if h.full == "" || !channelName(h.name) {
-			if a.evenAxis(c) || h.full == "" && a.axisLike(c) && a.t.col[c].count[number] == a.t.n || indexWord(h.full) && a.axisLike(c) {
+			if a.axisLike(c) && (h.full != "" || a.t.col[c].count[number] == a.t.n) {
 				a.setTime(c)
 				a.how0 = "its even steps"
 				if h.full == "" {

@@ -48,7 +48,7 @@ type breach struct {
 }
 
 // hole is a place of blank rows among the samples: before row at.
-type hole struct{ at, line int }
+type hole struct{ at, line, rows int }
 
 // body is the table read.
 type body struct {
@@ -95,19 +95,20 @@ func (f *file) scan(lay *layout) (*body, error) {
 		t.col[c].whole = true
 	}
 	var (
-		b      = f.text
-		p      = lay.start
-		line   = lay.line
-		w      = lay.width
-		last   = make([]int, w)
-		digits = make([]int, w)
-		room   = 0
-		odds   []oddCell
-		open   *breach // text rows since the last row of samples
-		gapAt  int     // line of the first blank row since then
-		budget = len(b) - p + w
-		off    = math.MinInt
-		clocks = slices.Contains(lay.clock, true)
+		b       = f.text
+		p       = lay.start
+		line    = lay.line
+		w       = lay.width
+		last    = make([]int, w)
+		digits  = make([]int, w)
+		room    = 0
+		odds    []oddCell
+		open    *breach // text rows since the last row of samples
+		gapAt   int     // line of the first blank row since then
+		gapRows int     // how many
+		budget  = len(b) - p + w
+		off     = math.MinInt
+		clocks  = slices.Contains(lay.clock, true)
 	)
 	for p < len(b) {
 		if t.n == room {
@@ -200,8 +201,8 @@ func (f *file) scan(lay *layout) (*body, error) {
 			}
 			open = nil
 			if gapAt > 0 {
-				t.addHole(gapAt)
-				gapAt = 0
+				t.addHole(gapAt, gapRows)
+				gapAt, gapRows = 0, 0
 			}
 			if thisLine-t.n != off {
 				off = thisLine - t.n
@@ -238,7 +239,7 @@ func (f *file) scan(lay *layout) (*body, error) {
 		}
 		switch what {
 		case isNothing:
-			if gapAt == 0 {
+			if gapRows++; gapAt == 0 {
 				gapAt = thisLine
 			}
 			continue
@@ -257,9 +258,9 @@ func (f *file) scan(lay *layout) (*body, error) {
 		}
 		if gapAt > 0 {
 			if open == nil {
-				t.addHole(gapAt)
+				t.addHole(gapAt, gapRows)
 			}
-			gapAt = 0
+			gapAt, gapRows = 0, 0
 		}
 		open = nil
 		if t.short > 0 && c >= w && t.short != thisLine {
@@ -314,9 +315,9 @@ const (
 // judge says whether an irregular row holds samples, nothing, or text.
 func (lay *layout) judge(odds []oddCell, plain, c int, wide bool) int {
 	any := plain > 0 || wide
-	holds := plain         // cells anywhere that hold data
-	core, text := 0, false // core cells that hold data; one that holds text
-	first := false         // text in the first core column
+	holds := plain              // cells anywhere that hold data
+	core, text := 0, false      // core cells that hold data; one that holds text
+	first, like := false, false // text in the first core column; it looks like a number
 	for i, next := 0, 0; i < min(c, lay.width); i++ {
 		o := oddCell{c: i, cell: cell{kind: number}}
 		if next < len(odds) && odds[next].c == i {
@@ -333,7 +334,10 @@ func (lay *layout) judge(odds []oddCell, plain, c int, wide bool) int {
 			text = true
 			// A damaged number or clock time in the first column is a bad cell
 			// of a row of samples; any other text makes the row text.
-			first = first || i == lay.first && (o.kind != prose || !numberLike(o.raw))
+			if i == lay.first {
+				like = o.kind == prose && numberLike(o.raw)
+				first = !like
+			}
 		case o.kind.holds():
 			core++
 		}
@@ -341,15 +345,30 @@ func (lay *layout) judge(odds []oddCell, plain, c int, wide bool) int {
 	switch {
 	case !any:
 		return isNothing
+	case like:
+		return isSamples
 	case first, text && core == 0, core == 0 && (wide || holds == 0):
 		return isText
 	}
 	return isSamples
 }
 
-// numberLike says whether text begins as a number, a clock time or a mark does.
+// numberLike says whether text looks like a damaged number, clock time or mark:
+// one word, beginning as they do, half of it digits.
 func numberLike(b []byte) bool {
-	return len(b) > 0 && (b[0]-'0' <= 9 || b[0] == '-' || b[0] == '+' || b[0] == '.' || b[0] == '#')
+	if len(b) == 0 || !(b[0]-'0' <= 9 || b[0] == '-' || b[0] == '+' || b[0] == '.' || b[0] == '#') {
+		return false
+	}
+	digits := 0
+	for _, c := range b {
+		if c == ' ' {
+			return false
+		}
+		if c-'0' <= 9 {
+			digits++
+		}
+	}
+	return digits*2 >= len(b) || b[0] == '#'
 }
 
 // storeOdd stores a cell that is no plain number.
@@ -484,10 +503,10 @@ const (
 	maxBreaches = 1 << 12 // places of text among samples
 )
 
-func (t *body) addHole(line int) {
+func (t *body) addHole(line, rows int) {
 	t.nHoles++
 	if len(t.holes) < maxLost {
-		t.holes = append(t.holes, hole{t.n, line})
+		t.holes = append(t.holes, hole{t.n, line, rows})
 	}
 }
 

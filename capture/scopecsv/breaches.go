@@ -122,17 +122,24 @@ func (a *assembly) flagBreaches() error {
 			a.flag(recording.Gap, 0, from, to, "text stands among the samples (line %d: %q); samples may be missing there", b.line, short(words(b.rows[0].text)))
 		}
 	}
-	switch {
-	case a.t.nHoles == 0 || sure:
-	case a.t.nHoles*5 >= a.rows*2:
+	if a.t.nHoles == 0 || sure {
+		return nil
+	}
+	// A file spaced out evenly has as many blank rows in most places.
+	usual := 0
+	if a.t.nHoles*5 >= a.rows*2 {
+		usual = a.t.holes[0].rows
 		a.assume("blank rows between the rows left out")
-	default:
-		for i, h := range a.t.holes {
-			a.breakAt(h.at)
-			if i < maxPlaces {
-				from, to := a.place(max(h.at-1, 0), h.at)
-				a.flag(recording.Gap, 0, from, to, "blank rows among the samples at line %d; samples may be missing there", h.line)
-			}
+	}
+	flags := 0
+	for _, h := range a.t.holes {
+		if h.rows == usual {
+			continue
+		}
+		a.breakAt(h.at)
+		if flags++; flags <= maxPlaces {
+			from, to := a.place(max(h.at-1, 0), h.at)
+			a.flag(recording.Gap, 0, from, to, "%s among the samples at line %d; samples may be missing there", plural(h.rows, "blank row"), h.line)
 		}
 	}
 	return nil

@@ -199,6 +199,9 @@ func (m timing) rate(n int) float64 {
 		u = math.Max(u, 3.5*m.rms)
 	}
 	slack := 2 * u / math.Pow(float64(n), 1.5)
+	if m.worst < 0.02*m.q {
+		slack = m.noise / math.Pow(float64(n), 1.5) // every step is the same to the last digit: that is the step
+	}
 	return roundRate(m.step, math.Min(slack, m.bound)/m.step)
 }
 

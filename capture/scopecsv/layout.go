@@ -97,11 +97,11 @@ func shapeOf(b []byte) shape {
 	}
 	whole := func(mark byte) bool {
 		_, n := num.Scan(b, mark)
-		if n == 0 {
-			return false
+		if n == 0 || n == len(b) {
+			return n > 0
 		}
 		_, ok := gluedUnit(b[n:])
-		return n == len(b) || ok
+		return ok
 	}
 	dot, comma := whole('.'), whole(',')
 	body := b
@@ -203,8 +203,10 @@ func (f *file) findStyle(rows []sampled) (style, error) {
 
 func bestSeparator(rows []sampled) byte {
 	best, top, most := byte(','), -1.0, 0
+	var marks [256]float64
 	for _, s := range separators {
 		m, cells := score(rows, s.sep)
+		marks[s.sep] = m
 		switch {
 		case m > top+0.02,
 			m > top-0.02 && cells > most && s.sep != ' ',
@@ -212,7 +214,33 @@ func bestSeparator(rows []sampled) byte {
 			best, top, most = s.sep, max(m, top), cells
 		}
 	}
+	if best == ',' {
+		// One column of decimal commas looks like two of whole numbers; the
+		// rows of text around it tell which.
+		for _, sep := range []byte{'\t', ';', '|'} {
+			if marks[sep] > top-0.02 && onlyIn(rows, sep) {
+				return sep
+			}
+		}
+	}
 	return best
+}
+
+// onlyIn says whether rows of text are parted by sep and never by a comma.
+func onlyIn(rows []sampled, sep byte) bool {
+	seen := false
+	for _, r := range rows {
+		if sh := shapeOf(r.text); sh.holds() {
+			continue
+		}
+		switch {
+		case bytes.IndexByte(r.text, sep) >= 0:
+			seen = true
+		case bytes.IndexByte(r.text, ',') >= 0:
+			return false
+		}
+	}
+	return seen
 }
 
 // findMark tells the decimal mark and digit grouping from all cells of the

@@ -12,10 +12,10 @@ type timing struct {
 	step     float64 // s a sample, least-squares slope of time on row over the whole record, breaks left out
 	bound    float64 // bound of its error from the rounding of the stamps, s
 	median   float64 // median step, s
+	noise    float64 // float64's own rounding of the largest stamp, s
 	q        float64 // worth of the last digit of the coarsest stamp, s
-	reversed bool
-	breaks   []int // rows that follow a gap or restart
-	repeats  int   // steps of zero
+	breaks   []int   // rows that follow a gap or restart
+	repeats  int     // steps of zero
 	repeatAt int
 	worst    float64 // largest distance of a stamp from the line, s
 	rms      float64
@@ -70,7 +70,8 @@ func measureTime(t []float64, unit func(float64) float64) timing {
 	if m.single = isSingle(t, m.q); m.single {
 		m.q = math.Max(m.q, 1.2e-7*far)
 	}
-	m.q = math.Max(m.q, 4.5e-16*far) // float64's own
+	m.noise = 4.5e-16 * far
+	m.q = math.Max(m.q, m.noise)
 
 	steps := make([]float64, 0, len(t)-1)
 	zeros, least := 0, math.Inf(1)

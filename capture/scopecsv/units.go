@@ -71,12 +71,15 @@ var plainUnits = map[string]unitWord{
 
 // gluedUnit reads a unit behind a number in one cell: "514.1mV", "-5 us".
 func gluedUnit(b []byte) (string, bool) {
-	if len(b) > 16 {
+	if c := b[0] | 0x20; len(b) > 16 || !(c >= 'a' && c <= 'z' || c == ' ' || c == '%' || c >= 0x80) {
 		return "", false
 	}
-	w := strings.TrimSpace(string(b))
-	q, _ := unitOf(words([]byte(w)))
-	return words([]byte(w)), q != unknown && q != counts
+	w := words(b)
+	if _, ok := prefix(w); ok && w != "" {
+		return w, true // "514.1m": a prefix without its unit
+	}
+	q, _ := unitOf(w)
+	return w, q != unknown && q != counts
 }
 
 // header is what the text over a column says.
