@@ -29,6 +29,9 @@ type Line struct {
 	// Blocks holds the peak phasors at the middles of Lines.Blocks, turned
 	// back by the track.
 	Blocks []complex128
+	// Parts holds, for strong mains lines, the peak phasors of the blocks'
+	// parts, equally many a block, turned back by the track; nil for others.
+	Parts []complex128
 	// Dropped: the line coincides with one of the tone and was not fitted.
 	Dropped bool
 	track   *sinefit.Track
@@ -102,6 +105,7 @@ func decompose(p *analyze.Pass, s *analyze.Signal, o Options) *Lines {
 	l.layout(f, toneTrack, o)
 	l.fitBlocks()
 	l.measure()
+	l.refine()
 	return l
 }
 

@@ -19,7 +19,7 @@ func (l *Lines) residual() *spectrum.Density {
 	hop := max(m/4, 1)
 	w := spectrum.BlackmanHarris(m)
 	power, count := 0.0, 0
-	r := l.newRemover()
+	r := l.newRemover(l.all())
 	src := func(dst []float64, at int) int {
 		k := s.Read(dst, at)
 		r.take(dst[:k], at)
@@ -42,7 +42,7 @@ func (l *Lines) residual() *spectrum.Density {
 	return d
 }
 
-// remover takes DC and all lines off samples read in order.
+// remover takes DC and lines off samples read in order.
 type remover struct {
 	l     *Lines
 	lines []*Line
@@ -51,8 +51,8 @@ type remover struct {
 	block int
 }
 
-func (l *Lines) newRemover() *remover {
-	r := &remover{l: l, lines: l.all()}
+func (l *Lines) newRemover(lines []*Line) *remover {
+	r := &remover{l: l, lines: lines}
 	r.osc = make([]sinefit.Oscillator, len(r.lines))
 	for _, q := range r.lines {
 		r.fixed = append(r.fixed, q.track.Rigid && !l.isMains(q) && l.constant(q))
