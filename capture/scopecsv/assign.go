@@ -512,6 +512,9 @@ func (a *assembly) frequencyAxis(numeric []bool) error {
 			continue
 		}
 		h := a.heads.col[c]
+		if a.counting(c) && h.q == unknown && c+1 < len(numeric) {
+			continue // row numbers
+		}
 		name := strings.ToLower(h.name)
 		named := strings.HasPrefix(name, "freq") || strings.Contains(name, "frequency") || name == "f" || strings.HasPrefix(name, "frequenz")
 		if (h.q == hertz || named && h.q == unknown) && a.rising(c) {

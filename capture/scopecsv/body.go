@@ -80,6 +80,9 @@ func (t *body) lineOf(n int) int {
 	return n + off
 }
 
+// blankCell stands for a blank in the list of last digits.
+const blankCell = math.MinInt
+
 type oddCell struct {
 	c int
 	cell
@@ -167,6 +170,9 @@ func (f *file) scan(lay *layout) (*body, error) {
 				t.col[c].v[t.n] = d.V
 				last[c], digits[c] = d.Last, d.Digits
 				plain++
+			case n == 0 && !lay.core[c]:
+				t.col[c].v[t.n] = math.NaN()
+				last[c] = blankCell
 			case n == 0:
 				t.col[c].v[t.n] = math.NaN()
 				odds = append(odds, oddCell{c, cell{kind: blank}})
@@ -210,6 +216,11 @@ func (f *file) scan(lay *layout) (*body, error) {
 			}
 			for c := range t.col {
 				k := &t.col[c]
+				if last[c] == blankCell {
+					k.count[blank]++
+					k.lose(t.n, blank, "blank", thisLine)
+					continue
+				}
 				if k.count[number]++; k.count[number] == 1 {
 					k.start = thisLine
 				}
@@ -282,6 +293,9 @@ func (f *file) scan(lay *layout) (*body, error) {
 				next++
 			case i >= c:
 				k.v[t.n] = math.NaN()
+				k.count[blank]++
+				k.lose(t.n, blank, "blank", thisLine)
+			case last[i] == blankCell:
 				k.count[blank]++
 				k.lose(t.n, blank, "blank", thisLine)
 			default:

@@ -141,10 +141,12 @@ func (a *assembly) rateFromColumn(stated *figure) error {
 		return a.fault(a.lineOf(max(m.worstAt, 0)), recording.ErrAmbiguous,
 			fmt.Sprintf("the rate is in doubt: slope of the time column %s a sample, median step %s, %q (line %d) %s", seconds3(m.step), seconds3(m.median), stated.key, stated.line, seconds3(stated.v)),
 			"say which holds: "+rateKey)
+	case m.pairs:
+		a.flag(recording.RateDoubt, 0, nil, nil, "two rows a time stamp give no sample rate; state it if they are samples: %s", rateKey)
 	default:
 		a.flag(recording.RateDoubt, 0, nil, nil, "no one rate fits the time column (median step %s, mean %s); state one: %s", seconds3(m.median), seconds3(m.step), rateKey)
 	}
-	if a.opt.Resample && !m.even {
+	if a.opt.Resample && !m.even && !m.pairs {
 		return a.resample(m, stated)
 	}
 	return nil
@@ -242,7 +244,7 @@ func (a *assembly) flagColumn(m timing) {
 	}
 	if m.repeats > 0 {
 		from, to := a.place(m.repeatAt-1, m.repeatAt)
-		if m.repeats*2 >= len(a.stamp)-2 && m.repeats*2 <= len(a.stamp)+2 && m.q < 0.5*m.median+0.5*m.step {
+		if m.pairs {
 			a.flag(recording.DuplicateTime, 0, from, to, "every time stamp stands twice (first in lines %d and %d): pairs, perhaps of minimum and maximum, not samples in a row", a.lineOf(m.repeatAt-1), a.lineOf(m.repeatAt))
 		} else {
 			a.flag(recording.DuplicateTime, 0, from, to, "%s repeat the one before (first in line %d); stamps are read to %s", plural(m.repeats, "time stamp"), a.lineOf(m.repeatAt), seconds3(m.q))

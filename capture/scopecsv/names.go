@@ -220,8 +220,11 @@ func (f *file) isUnits(lay *layout, cells []string, numeric []bool) bool {
 		if c > 0 && !numeric[c-1] && settingWord(cells[c-1]) {
 			return false
 		}
-		if _, _, _, ok := unitsCell(t); ok {
+		if u, q, _, ok := unitsCell(t); ok && (q != other || u != t || len(t) > 1) {
 			n++
+		} else if ok && !timeWord(t) {
+			// A bare letter, A or C, may be a unit or a channel's name: the
+			// other cells decide.
 		} else if !indexWord(t) && !(lay.clock[c] && timeWord(t)) {
 			return false
 		}

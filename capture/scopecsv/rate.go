@@ -20,6 +20,7 @@ type timing struct {
 	worst    float64 // largest distance of a stamp from the line, s
 	rms      float64
 	worstAt  int
+	pairs    bool // every stamp stands exactly twice
 	even     bool // all stamps lie on the line within their rounding
 	single   bool // stamps are 32-bit floats printed with more digits
 	usable   bool // near enough to the line that the slope is a sample rate
@@ -92,7 +93,16 @@ func measureTime(t []float64, unit func(float64) float64) timing {
 	sorted := append([]float64(nil), steps...)
 	sort.Float64s(sorted)
 	m.median = (sorted[(len(sorted)-1)/2] + sorted[len(sorted)/2]) / 2
-	if zeros*4 >= len(steps) && zeros < len(steps) && !pairs(t, zeros) {
+	switch {
+	case pairs(t, zeros) && least > 4*m.q:
+		// Two values a stamp: no rate, whatever the rest.
+		m.pairs, m.even, m.repeats, m.repeatAt = true, true, zeros, 1
+		if t[1] != t[0] {
+			m.repeatAt = 2
+		}
+		m.step = (hi - lo) / float64(len(t)-1)
+		return m
+	case zeros*4 >= len(steps) && zeros < len(steps):
 		m.q = math.Max(m.q, least*(1-1e-9)) // stamps are coarser than their digits
 	}
 	low, high := m.normal(steps)

@@ -10,7 +10,7 @@ import (
 // printed digits. 0 when there is none, or when the step cannot be told from
 // the rounding itself (under two units of the last digit).
 func codeStep(v []float64, q float64, digits int) float64 {
-	const look = 4096
+	const look = 1 << 16
 	stride := max(1, len(v)/look)
 	var s []float64
 	hi := 0.0
@@ -32,15 +32,21 @@ func codeStep(v []float64, q float64, digits int) float64 {
 			u = append(u, x)
 		}
 	}
-	if len(u) < 3 || len(u)*2 > len(s) {
-		return 0 // nearly every value is new: no steps to be seen
+	if len(u) < 3 {
+		return 0
 	}
 	least := math.Inf(1)
 	for i := 1; i < len(u); i++ {
 		least = math.Min(least, u[i]-u[i-1])
 	}
 	for part := 1; part <= 4; part++ { // the least difference may be 2..4 steps
-		if g := fitStep(u, least/float64(part)); g >= 1.9*q && onGrid(v, u[0], g, q) {
+		g := fitStep(u, least/float64(part))
+		// Values that have nothing to do with steps of g fall onto their grid
+		// with this chance: too likely means that nothing is shown.
+		if chance := math.Pow(2*tolerance(g, q)/g, float64(len(u)-2)); g < 1.9*q || chance > 1e-9 {
+			continue
+		}
+		if onGrid(v, u[0], g, q) {
 			return g
 		}
 	}
@@ -70,9 +76,13 @@ func fitStep(u []float64, g float64) float64 {
 	}
 }
 
+// tolerance is how far from a multiple of the step g a printed value may lie:
+// its own rounding and that of the level it is measured from.
+func tolerance(g, q float64) float64 { return math.Min(1.05*q, 0.3*g) + 1e-12*g }
+
 // onGrid says whether every value lies on base + k g within the rounding.
 func onGrid(v []float64, base, g, q float64) bool {
-	tol := math.Min(1.05*q, 0.3*g) + 1e-12*g
+	tol := tolerance(g, q)
 	for _, x := range v {
 		if x != x {
 			continue
