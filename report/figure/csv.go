@@ -44,7 +44,7 @@ func CSV(f *analyze.Figure) []byte {
 		// Names are escaped once a curve, not once a point.
 		part, name := report.Cell(s.Kind)+",", report.Cell(s.Name)+","
 		c := fr.curves[i]
-		if len(c.x) <= 2*fr.columns {
+		if !c.thinned {
 			for k := range min(len(s.X), len(s.Y)) {
 				low := ""
 				if k < len(s.Low) {
@@ -55,12 +55,11 @@ func CSV(f *analyze.Figure) []byte {
 			continue
 		}
 		part = report.Cell(s.Kind+" extremes") + ","
-		cols, _ := columns(c.x, c.y, fr.x, fr.columns)
-		lows := cols
+		lows := c.cols
 		if c.low != nil {
 			lows, _ = columns(c.x, c.low, fr.x, fr.columns)
 		}
-		for k, col := range cols {
+		for k, col := range c.cols {
 			if c.low != nil {
 				low := math.Min(lows[k].y1, lows[k].y2)
 				point(part+name, col.x1/fr.x.factor, math.Max(col.y1, col.y2)/fr.y.factor, num(low/fr.y.factor))

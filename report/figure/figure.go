@@ -23,6 +23,7 @@ import (
 	"gonum.org/v1/plot/text"
 	"gonum.org/v1/plot/vg"
 	"gonum.org/v1/plot/vg/draw"
+	"gonum.org/v1/plot/vg/vgimg"
 	"gonum.org/v1/plot/vg/vgsvg"
 
 	"benchslip/analyze"
@@ -104,35 +105,54 @@ func Draw(c draw.Canvas, f *analyze.Figure) (remarks []string) {
 // kind goes into an HTML page. Remarks belong behind the caption.
 func SVG(f *analyze.Figure, id string, standalone bool) (svg []byte, remarks []string) {
 	height := vg.Length(Height)
-	const top, bottom = 24, 34
 	if standalone {
-		height += top + bottom
+		height += headRoom + footRoom
 	}
 	canvas := vgsvg.New(Width, height)
 	c := draw.New(canvas)
-	c.SetColor(white)
-	c.Fill(c.Rectangle.Path())
-	area := c
+	caption := ""
 	if standalone {
-		area = draw.Crop(c, 0, 0, bottom, -top)
-	}
-	remarks = Draw(area, f)
-	caption := Caption(f, remarks)
-	if standalone {
-		title := sans(12, ink, true)
-		title.YAlign = draw.YTop
-		c.FillText(title, vg.Point{X: 10, Y: c.Max.Y - 7}, cut(title, report.Clean(f.Title), Width-20))
-		lines := report.Wrap(caption, 118)
-		for i, l := range lines {
-			if i == 2 {
-				break
-			}
-			c.FillText(sans(9.5, soft, false), vg.Point{X: 10, Y: vg.Length(bottom - 14 - 12*i)}, l)
-		}
+		caption, remarks = whole(c, f)
+	} else {
+		remarks = Draw(c, f)
+		caption = Caption(f, remarks)
 	}
 	var raw bytes.Buffer
 	canvas.WriteTo(&raw) // a bytes.Buffer does not fail
 	return dress(raw.String(), f, id, caption, height, standalone), remarks
+}
+
+// PNG draws a whole figure with heading and caption as a picture; dpi 96 gives
+// about 850 pixels of width.
+func PNG(f *analyze.Figure, dpi int) ([]byte, error) {
+	canvas := vgimg.NewWith(vgimg.UseWH(Width, Height+headRoom+footRoom), vgimg.UseDPI(dpi), vgimg.UseBackgroundColor(white))
+	whole(draw.New(canvas), f)
+	var b bytes.Buffer
+	if _, err := (vgimg.PngCanvas{Canvas: canvas}).WriteTo(&b); err != nil {
+		return nil, fmt.Errorf("figure: %w", err)
+	}
+	return b.Bytes(), nil
+}
+
+// headRoom and footRoom are what heading and caption take, in points.
+const headRoom, footRoom = 24, 34
+
+// whole draws a figure with its title above and its caption below.
+func whole(c draw.Canvas, f *analyze.Figure) (caption string, remarks []string) {
+	c.SetColor(white)
+	c.Fill(c.Rectangle.Path())
+	remarks = Draw(draw.Crop(c, 0, 0, footRoom, -headRoom), f)
+	caption = Caption(f, remarks)
+	title := sans(12, ink, true)
+	title.YAlign = draw.YTop
+	c.FillText(title, vg.Point{X: 10, Y: c.Max.Y - 7}, cut(title, report.Clean(f.Title), Width-20))
+	for i, l := range report.Wrap(caption, 118) {
+		if i == 2 {
+			break
+		}
+		c.FillText(sans(9.5, soft, false), vg.Point{X: 10, Y: vg.Length(footRoom - 14 - 12*i)}, l)
+	}
+	return caption, remarks
 }
 
 // dress replaces the library's prelude by one with a title, a description and

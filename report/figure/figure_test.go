@@ -5,6 +5,7 @@ import (
 	stdcsv "encoding/csv"
 	"encoding/xml"
 	"fmt"
+	"image/png"
 	"io"
 	"math"
 	"slices"
@@ -96,7 +97,7 @@ func TestSVGOfEveryKind(t *testing.T) {
 }
 
 func TestLongCurvesSaySo(t *testing.T) {
-	n := 300_000
+	n := 100_000
 	long := analyze.Series{Name: "long", Kind: analyze.Line}
 	for i := range n {
 		long.X = append(long.X, float64(i))
@@ -293,6 +294,45 @@ func TestWords(t *testing.T) {
 		"between -120.00 dBu and 4.00 dBu, largest at 1.000 kHz. Marked: harmonic H2 at 2.000 kHz, -80.00 dBu. Line across at 20.00 kHz (band edge)."
 	if got := Words(&f); got != want {
 		t.Errorf("got  %s\nwant %s", got, want)
+	}
+}
+
+// A picture is quick even for a curve as long as a take, and says something.
+func TestPNG(t *testing.T) {
+	for _, f := range figures(t) {
+		raw, err := PNG(&f, 96)
+		if err != nil {
+			t.Fatal(err)
+		}
+		img, err := png.Decode(bytes.NewReader(raw))
+		if err != nil {
+			t.Fatal(err)
+		}
+		dark := 0
+		for y := range img.Bounds().Dy() {
+			for x := range img.Bounds().Dx() {
+				if r, _, _, _ := img.At(x, y).RGBA(); r < 0x8000 {
+					dark++
+				}
+			}
+		}
+		if n := img.Bounds().Dx() * img.Bounds().Dy(); dark < n/200 || dark > n*2/3 || len(raw) > 300_000 {
+			t.Errorf("%s: %d of %d pixels dark, %d bytes", f.ID, dark, n, len(raw))
+		}
+	}
+}
+
+func BenchmarkPNG(b *testing.B) {
+	for _, c := range sample.Slip().Checks {
+		for _, f := range c.Figures {
+			if f.ID == "timeline" {
+				for b.Loop() {
+					if _, err := PNG(&f, 96); err != nil {
+						b.Fatal(err)
+					}
+				}
+			}
+		}
 	}
 }
 

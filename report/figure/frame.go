@@ -42,10 +42,12 @@ type axis struct {
 }
 
 // curve is a series with finite points in shown units; low only for
-// envelopes.
+// envelopes. cols are its points by pixel column.
 type curve struct {
 	name, kind string
 	x, y, low  []float64
+	cols       []column
+	thinned    bool // cols hold the extremes only
 }
 
 // maxMarks is the largest number of marks that a figure can hold and still be
@@ -87,6 +89,10 @@ func newFrame(f *analyze.Figure, width float64) *frame {
 	if !fr.empty {
 		fr.range_()
 	}
+	for i := range fr.curves {
+		c := &fr.curves[i]
+		c.cols, c.thinned = columns(c.x, c.y, fr.x, fr.columns)
+	}
 	return fr
 }
 
@@ -114,7 +120,10 @@ func (fr *frame) extent(a analyze.Axis, of func(analyze.Series) [][]float64) flo
 // newAxis chooses the shown unit. A linear axis in a plain unit takes the
 // prefix that suits its values; a log axis keeps its unit.
 func newAxis(a analyze.Axis, extent float64) axis {
-	out := axis{log: a.Log, factor: 1, min: a.Min, max: a.Max}
+	out := axis{log: a.Log, factor: 1}
+	if out.fits(a.Min) && out.fits(a.Max) && a.Min < a.Max {
+		out.min, out.max = a.Min, a.Max // a range that cannot be is left open
+	}
 	symbol := report.Clean(a.Unit)
 	if u, err := unit.Lookup(a.Unit); err == nil {
 		shown := u
@@ -139,8 +148,12 @@ func newAxis(a analyze.Axis, extent float64) axis {
 
 func finite(v float64) bool { return !math.IsNaN(v) && !math.IsInf(v, 0) }
 
-// fits reports whether a value of the data can stand on the axis at all.
-func (a axis) fits(v float64) bool { return finite(v) && (!a.log || v > 0) }
+// fits reports whether a value of the data can stand on the axis at all: it
+// is finite, above zero on a logarithmic one, and far from where differences
+// overflow.
+func (a axis) fits(v float64) bool {
+	return math.Abs(v) <= 1e100 && (!a.log || v >= 1e-100)
+}
 
 // shows reports whether a value lies inside a range that the figure sets.
 func (a axis) shows(v float64) bool {
@@ -196,8 +209,16 @@ func (fr *frame) range_() {
 	// A few bins of a spectrum may be as deep as rounding allows. They are let
 	// run off the foot rather than squeeze the rest.
 	if strings.HasPrefix(fr.fig.Y.Unit, "dB") {
-		slices.Sort(vy)
-		if deep := vy[len(vy)/100]; deep-lo > 0.3*(hi-deep) && hi > deep {
+		// One in a hundred lies below deep; a few thousand values tell it.
+		some := vy
+		if step := len(vy) / 4000; step > 1 {
+			some = nil
+			for i := 0; i < len(vy); i += step {
+				some = append(some, vy[i])
+			}
+		}
+		slices.Sort(some)
+		if deep := some[len(some)/100]; deep-lo > 0.3*(hi-deep) && hi > deep {
 			lo = deep - 0.08*(hi-deep)
 			fr.offBelow = true
 		}
@@ -216,7 +237,10 @@ func (fr *frame) range_() {
 			return
 		}
 	}
-	a.widen(0.06)
+	a.widen(0.05)
+	if len(fr.marks) > 0 && !a.log {
+		a.max += 0.06 * (a.max - a.min) // room for labels above the highest mark
+	}
 }
 
 // widen opens a range that has no width and adds part of it at both ends.

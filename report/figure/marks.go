@@ -1,6 +1,8 @@
 package figure
 
 import (
+	"math"
+
 	"gonum.org/v1/plot/vg"
 	"gonum.org/v1/plot/vg/draw"
 
@@ -174,11 +176,13 @@ func (l ruleLabel) paint(c draw.Canvas, fr *frame, tx, ty func(float64) vg.Lengt
 // crosses reports whether a curve has a point in the box.
 func (fr *frame) crosses(b vg.Rectangle, tx, ty func(float64) vg.Length) bool {
 	for _, cv := range fr.curves {
-		for i := range cv.x {
-			if x := tx(cv.x[i]); x >= b.Min.X && x <= b.Max.X {
-				if y := ty(cv.y[i]); y >= b.Min.Y-2 && y <= b.Max.Y+2 {
-					return true
-				}
+		for _, k := range cv.cols {
+			if x := tx(k.x1); x < b.Min.X || x > b.Max.X {
+				continue
+			}
+			lo, hi := ty(math.Min(k.y1, k.y2)), ty(math.Max(k.y1, k.y2))
+			if hi >= b.Min.Y-2 && lo <= b.Max.Y+2 {
+				return true
 			}
 		}
 	}
@@ -194,7 +198,7 @@ type room struct {
 func (r *room) take(b vg.Rectangle) { r.boxes = append(r.boxes, b) }
 
 func (r *room) free(b vg.Rectangle) bool {
-	if b.Min.X < r.area.Min.X || b.Max.X > r.area.Max.X || b.Min.Y < r.area.Min.Y || b.Max.Y > r.area.Max.Y+10 {
+	if b.Min.X < r.area.Min.X || b.Max.X > r.area.Max.X || b.Min.Y < r.area.Min.Y || b.Max.Y > r.area.Max.Y+4 {
 		return false
 	}
 	for _, o := range r.boxes {
@@ -296,7 +300,7 @@ func (fr *frame) swatch(c draw.Canvas, cv curve, i int, at vg.Point) {
 		fr.points(c, curve{x: []float64{0}, y: []float64{0}}, func(float64) vg.Length { return at.X + 12 }, func(float64) vg.Length { return at.Y + 4 }, i)
 	default:
 		style := stroke(i)
-		if len(cv.x) > 2*fr.columns {
+		if cv.thinned {
 			style.Dashes = nil
 			style.Width = 2
 		}

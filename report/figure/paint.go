@@ -61,19 +61,28 @@ func gridLines(c draw.Canvas, p *plot.Plot, tx, ty func(float64) vg.Length) {
 	}
 }
 
-// piece is the longest stretch that is stroked at once: some rasterisers take
-// a time that grows with the square of it.
-const piece = 400
+// piece is the longest stretch that is stroked at once: the rasteriser below
+// PNG takes a time that grows with the square of it.
+const piece = 64
+
+func strokeLine(c draw.Canvas, style draw.LineStyle, pts []vg.Point) {
+	for a := 0; a < len(pts)-1; a += piece {
+		c.StrokeLines(style, c.ClipLinesXY(pts[a:min(a+piece+1, len(pts))])...)
+	}
+}
 
 // line strokes a curve. Where a pixel column holds many points, the area
 // between its smallest and largest is filled instead.
 func (fr *frame) line(c draw.Canvas, cv curve, tx, ty func(float64) vg.Length, i int) {
 	style := stroke(i)
-	cols, thinned := columns(cv.x, cv.y, fr.x, fr.columns)
+	cols, thinned := cv.cols, cv.thinned
 	if thinned {
 		fr.thinned = true
 		// A dashed envelope cannot be read: the legend names it by its tone.
 		style.Width, style.Dashes = 0.7, nil
+	}
+	if len(cols) == 0 {
+		return
 	}
 	at := func(x, y float64) vg.Point { return vg.Point{X: tx(x), Y: ty(y)} }
 	if len(cols) == 1 && cols[0].n == 1 {
@@ -95,7 +104,7 @@ func (fr *frame) line(c draw.Canvas, cv curve, tx, ty func(float64) vg.Length, i
 			slices.Reverse(lower)
 			outline := c.ClipPolygonXY(append(upper, lower...))
 			c.FillPolygon(paler(style.Color), outline)
-			c.StrokeLines(draw.LineStyle{Color: style.Color, Width: 0.5}, append(outline, outline[:min(1, len(outline))]...))
+			strokeLine(c, draw.LineStyle{Color: style.Color, Width: 0.5}, append(outline, outline[:min(1, len(outline))]...))
 		} else {
 			var pts []vg.Point
 			if from > 0 {
@@ -107,9 +116,7 @@ func (fr *frame) line(c draw.Canvas, cv curve, tx, ty func(float64) vg.Length, i
 					pts = append(pts, at(k.x2, k.y2))
 				}
 			}
-			for a := 0; a < len(pts)-1; a += piece {
-				c.StrokeLines(style, c.ClipLinesXY(pts[a:min(a+piece+1, len(pts))])...)
-			}
+			strokeLine(c, style, pts)
 		}
 		from = to
 	}
@@ -182,8 +189,8 @@ func (fr *frame) envelope(c draw.Canvas, cv curve, tx, ty func(float64) vg.Lengt
 	}
 	c.FillPolygon(shade, c.ClipPolygonXY(poly))
 	edge := draw.LineStyle{Color: strokes[i%len(strokes)].color, Width: 0.5}
-	c.StrokeLines(edge, c.ClipLinesXY(upper)...)
-	c.StrokeLines(edge, c.ClipLinesXY(lower)...)
+	strokeLine(c, edge, upper)
+	strokeLine(c, edge, lower)
 }
 
 func (fr *frame) points(c draw.Canvas, cv curve, tx, ty func(float64) vg.Length, i int) {

@@ -35,6 +35,7 @@ var sheet = template.Must(template.New("sheet").Funcs(template.FuncMap{
 type data struct {
 	Style             template.CSS
 	Head              report.Head
+	Title             string // as typed
 	Gate              template.HTML
 	VerdictClass      string
 	Tool              string
@@ -110,10 +111,13 @@ func squeeze(page []byte) []byte {
 func gather(s *slip.Slip) *data {
 	rows := report.Rows(s)
 	d := &data{Style: template.CSS(strings.Replace(style, "SHEET", cssWord(s.Sheet), 1)), Head: report.HeadOf(s, rows),
-		Gate: gate(s.Verdict, 2.2), VerdictClass: verdictClass(s.Verdict), Tool: report.ToolLine(s),
+		Title: s.Title, Gate: gate(s.Verdict, 2.2), VerdictClass: verdictClass(s.Verdict), Tool: report.ToolLine(s),
 		Unit: report.RawPairs(s.Unit, s.UnitKeys), Record: report.RawPairs(s.Record, s.RecordKeys), Flags: report.Flags(s),
 		Gear: s.Gear, Cautions: s.Cautions, Job: s.Job, LimitsSHA256: s.LimitsSHA256,
 		Operator: s.Record["operator"], Approved: s.Record["approved"]}
+	if strings.TrimSpace(d.Title) == "" {
+		d.Title = d.Head.Title
+	}
 	if d.Operator == "" {
 		d.Operator = s.Record["measured"]
 	}

@@ -64,3 +64,12 @@ func hasFile(files []File, name string) bool {
 	}
 	return false
 }
+
+func BenchmarkBuildThirtyChecks(b *testing.B) {
+	s := sample.Many(30)
+	for b.Loop() {
+		if _, err := Build(s); err != nil {
+			b.Fatal(err)
+		}
+	}
+}

@@ -17,6 +17,7 @@ import (
 	"benchslip/report/json"
 	"benchslip/report/junit"
 	"benchslip/report/markdown"
+	"benchslip/report/pdf"
 	"benchslip/report/text"
 )
 
@@ -33,6 +34,7 @@ func All() []Renderer {
 		{"slip.html", html.Render},
 		{"slip.txt", text.Render},
 		{"slip.csv", csv.Render},
+		{"slip.pdf", pdf.Render},
 		{"slip.md", markdown.Render},
 		{"slip.xml", junit.Render},
 		{"slip.json", json.Render},
