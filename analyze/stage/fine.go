@@ -20,6 +20,9 @@ const (
 	// overShare: a line's power stands at least this far over the noise share
 	// of a part, so that shorter parts cost under 1/24 of its variance.
 	overShare = 12
+	// rounding: what lies 160 dB under the strongest line may be what taking
+	// that one off has left.
+	rounding = 1e-16
 )
 
 // refine replaces the powers of strong mains lines by means over parts of
@@ -34,9 +37,13 @@ const (
 func (l *Lines) refine() {
 	var lines []*Line
 	strong := false
+	top := 0.0
+	for _, q := range l.all() {
+		top = math.Max(top, q.Power)
+	}
 	for i := range l.Mains {
 		q := &l.Mains[i]
-		if q.Dropped || q.Power < 2*q.Share {
+		if q.Dropped || q.Power < 2*q.Share || q.Power < rounding*top {
 			continue
 		}
 		lines = append(lines, q)
