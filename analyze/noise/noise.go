@@ -190,7 +190,7 @@ func runDensity(p *analyze.Pass) analyze.Result {
 	}
 	v := math.Sqrt(mean)
 	var b budget.Budget
-	b.A("noise statistics", v/2/math.Sqrt((hi-lo)*s.DurationS()), 0)
+	b.A("noise statistics", v/2/math.Sqrt((hi-lo)*s.DurationS()*l.Noise.Used), 0)
 	b.Scale(s, v)
 	r := analyze.Result{Value: &v, Unit: u}
 	b.Into(&r)

@@ -72,11 +72,11 @@ func LinesIn(b Band, gain func(float64) float64, sets ...[]Line) Power {
 
 // NoiseIn integrates the noise density in the band under gain. Its relative
 // uncertainty is 1/sqrt(B_s T), B_s the statistical bandwidth
-// (int S)^2/int S^2.
+// (int S)^2/int S^2, T the share of the span that the averaging uses.
 func NoiseIn(l *Lines, b Band, gain func(float64) float64) Power {
 	lo := b.NoiseLow(l)
 	p := l.Noise.Integrate(lo, b.High, gain)
-	return Power{p, p / math.Sqrt(math.Max(StatisticalBandwidth(l, lo, b.High, gain)*l.Sig.DurationS(), 1))}
+	return Power{p, p / math.Sqrt(math.Max(StatisticalBandwidth(l, lo, b.High, gain)*l.Sig.DurationS()*l.Noise.Used, 1))}
 }
 
 // StatisticalBandwidth is B_s in Hz; the scatter of the estimated density

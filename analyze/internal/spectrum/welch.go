@@ -13,6 +13,7 @@ type Density struct {
 	RateHz   float64
 	Segments int     // averaged segments
 	Averages float64 // equivalent number of independent averages
+	Used     float64 // share of the samples that counts: the ends lie under slopes of windows alone
 	NENBW    float64 // of the window, bins
 	Lobe     float64 // half width of the main lobe, bins
 }
@@ -71,7 +72,48 @@ func Welch(src Source, n int, rate float64, w Window, L, hop int) *Density {
 	d.S[0] /= 2
 	d.S[L/2] /= 2
 	d.Averages = effective(w, hop, d.Segments)
+	d.Used = used(w, hop, d.Segments, n)
 	return d
+}
+
+// used is (sum W)^2 / (n sum W^2) with W the sum of the squared windows over
+// each of the n samples: a power summed over a wide band scatters as if only
+// that share of the samples had been there, all counting alike.
+func used(w Window, hop, segments, n int) float64 {
+	m := len(w.W)
+	var one, two float64
+	at := func(i int) { // W at sample i
+		x := 0.0
+		for j := max(0, (i-m)/hop); j < segments && j*hop <= i; j++ {
+			if k := i - j*hop; k < m {
+				x += w.W[k] * w.W[k]
+			}
+		}
+		one += x
+		two += x * x
+	}
+	end := (segments-1)*hop + m
+	if end <= 4*m {
+		for i := range end {
+			at(i)
+		}
+	} else { // between the ends W repeats with every hop
+		for i := range m {
+			at(i)
+			at(end - 1 - i)
+		}
+		edge1, edge2 := one, two
+		one, two = 0, 0
+		for i := m; i < m+hop; i++ {
+			at(i)
+		}
+		times := float64(end-2*m) / float64(hop)
+		one, two = edge1+one*times, edge2+two*times
+	}
+	if two == 0 {
+		return 1
+	}
+	return one * one / (float64(n) * two)
 }
 
 // effective is K_eff of Welch's averages.
