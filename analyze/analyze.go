@@ -64,6 +64,9 @@ type Point struct {
 	Budget  []Contributor
 	Bound   *Bound
 	Refusal *Refusal
+	// Limit is an upper limit of the point's own, beside those of the row; nil:
+	// the point is judged by the row's.
+	Limit *unit.Quantity
 }
 
 // Refusal says why there is no value, with evidence, and the cheapest way out.

@@ -88,7 +88,7 @@ func Row(c *slip.Check, res analyze.Result, lim Limits, rule slip.Rule, seconds 
 	default:
 		r.refused(fault("the measure gave neither a value nor a reason"), nil)
 	}
-	r.lacking(res.Lacking)
+	r.lacking(res)
 	r.conditional(res.Conditional)
 }
 
@@ -223,8 +223,13 @@ func kind(b *analyze.Bound) string {
 
 // lacking keeps a row from a full pass when an uncertainty that its value
 // needs was never stated.
-func (r *row) lacking(keys []string) {
-	if len(keys) == 0 || !r.lim.limited() || r.Value == nil && r.Bound == nil {
+func (r *row) lacking(res analyze.Result) {
+	keys := res.Lacking
+	limited := r.lim.limited()
+	for _, p := range res.Points {
+		limited = limited || p.Limit != nil
+	}
+	if len(keys) == 0 || !limited || r.Value == nil && r.Bound == nil {
 		return
 	}
 	what := strings.Join(keys, ", ")

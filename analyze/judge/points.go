@@ -1,6 +1,8 @@
 package judge
 
 import (
+	"fmt"
+
 	"benchslip/analyze"
 	"benchslip/analyze/slip"
 )
@@ -18,20 +20,32 @@ func rank(verdict string) int {
 	return len(worst)
 }
 
-// points judges each of several results of a row. The row shows the value the
-// measure chose, else the smallest; its verdict is the worst of all points,
-// whose reason and advice it takes over.
+// points judges each of several results of a row, by a limit of its own or by
+// those of the row. The row shows the value the measure chose, else the
+// smallest; its verdict is the worst of all points, whose reason and advice it
+// takes over.
 func (r *row) points(res analyze.Result) {
 	judged := make([]slip.Check, len(res.Points))
 	for i, p := range res.Points {
 		one := slip.Check{Measure: r.Measure, Class: r.Class, Details: map[string]any{}}
 		part := *r
 		part.Check = &one
-		part.limits(&one, r.lim)
+		var problem *analyze.Refusal
+		if p.Limit != nil {
+			part.lim = Limits{Max: p.Limit}
+			part.view, problem = viewOf(res, part.lim)
+		}
+		part.limits(&one, part.lim)
 		one.Verdict = slip.NotJudged
-		if p.Value != nil {
+		switch {
+		case problem != nil:
+			part.refused(problem, nil)
+		case p.Value != nil:
 			part.value(*p.Value, nil, p.Budget)
-		} else if p.Refusal != nil {
+			if p.Limit != nil && one.Verdict == slip.Fail && one.Reason == "" {
+				one.Reason = fmt.Sprintf("%s: over its own limit of %s", p.Label, p.Limit)
+			}
+		case p.Refusal != nil:
 			part.refused(p.Refusal, p.Bound)
 		}
 		judged[i] = one
@@ -51,7 +65,8 @@ func (r *row) points(res analyze.Result) {
 	}
 	for i := range judged {
 		j := &judged[i]
-		if rank(j.Verdict) < rank(r.Verdict) && (r.judges() || j.Verdict == slip.NotMeasurable) {
+		judges := r.judges() || res.Points[i].Limit != nil && r.Class != Info
+		if rank(j.Verdict) < rank(r.Verdict) && (judges || j.Verdict == slip.NotMeasurable) {
 			r.Verdict, r.Advice = j.Verdict, j.Advice
 			r.Reason = ""
 			if j.Reason != "" {
@@ -132,6 +147,9 @@ func merged(own any, points []analyze.Point, judged []slip.Check) []map[string]a
 		}
 		e["verdict"] = judged[i].Verdict
 		set(e, "margin", judged[i].Margin)
+		if points[i].Limit != nil {
+			e["limit"] = points[i].Limit.String()
+		}
 		set(e, "probability", judged[i].Probability)
 		if b := judged[i].Bound; b != nil {
 			e[b.Kind+"_bound"] = b.Value

@@ -69,7 +69,7 @@ func Repeat(names []string, results []analyze.Result) analyze.Result {
 			break
 		}
 		c := meanOf(names, cells)
-		out.Points = append(out.Points, analyze.Point{Label: p.Label, Value: c.value, Budget: c.budget, Bound: c.bound, Refusal: c.refusal})
+		out.Points = append(out.Points, analyze.Point{Label: p.Label, Value: c.value, Budget: c.budget, Bound: c.bound, Refusal: c.refusal, Limit: p.Limit})
 	}
 	var values []float64
 	for _, r := range results {

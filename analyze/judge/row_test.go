@@ -341,3 +341,49 @@ func TestFinite(t *testing.T) {
 		}
 	}
 }
+
+// Points with a limit of their own fail a row whatever its own limits say, and
+// judge one that has none.
+func TestPointsOwnLimit(t *testing.T) {
+	most := unit.MustLookup("dBu")
+	own := &unit.Quantity{Number: -100, Unit: most}
+	pt := func(label string, dBu, rel float64) analyze.Point {
+		v := most.ToLinear(dBu)
+		return analyze.Point{Label: label, Value: &v, Limit: own, Budget: []analyze.Contributor{{Name: "noise", Kind: "A", U: rel * v}}}
+	}
+	below := func(dBu float64) analyze.Point {
+		return analyze.Point{Label: "order 9", Limit: own, Bound: &analyze.Bound{Upper: true, Value: most.ToLinear(dBu)},
+			Refusal: &analyze.Refusal{Code: analyze.BelowDetection, Text: "no line"}}
+	}
+	for _, c := range []struct {
+		name   string
+		max    string
+		points []analyze.Point
+		want   string
+	}{
+		{"all under, row without limits", "", []analyze.Point{pt("order 1", -103, 0.01), pt("order 3", -110, 0.01)}, p},
+		{"one over, row passes", "-90 dBu", []analyze.Point{pt("order 1", -98, 0.01), pt("order 3", -110, 0.01)}, f},
+		{"one over, row without limits", "", []analyze.Point{pt("order 1", -98, 0.01)}, f},
+		{"row fails alone", "-120 dBu", []analyze.Point{pt("order 1", -103, 0.01)}, f},
+		{"close", "", []analyze.Point{pt("order 1", -100.1, 0.02)}, cp},
+		{"bound under", "", []analyze.Point{pt("order 1", -103, 0.01), below(-101)}, p},
+		{"bound over", "", []analyze.Point{pt("order 1", -103, 0.01), below(-99)}, slip.NotMeasurable},
+	} {
+		v := most.ToLinear(-97)
+		r := analyze.Result{Unit: unit.MustLookup("V"), Value: &v, Points: c.points, Budget: []analyze.Contributor{{Name: "noise", Kind: "A", U: 1e-3 * v}}}
+		got := judged(r, "", c.max, FourWay)
+		if got.Verdict != c.want {
+			t.Errorf("%s: %s %q, want %s", c.name, got.Verdict, got.Reason, c.want)
+		}
+		if got.Value == nil || got.Verdict == f && c.max != "-120 dBu" && got.Reason == "" {
+			t.Errorf("%s: value %v, reason %q", c.name, got.Value, got.Reason)
+		}
+	}
+	var info slip.Check
+	info.Class = Info
+	v := most.ToLinear(-97)
+	Row(&info, analyze.Result{Unit: unit.MustLookup("V"), Value: &v, Points: []analyze.Point{pt("order 1", -90, 0.01)}}, Limits{}, slip.Rule{Coverage: 2}, 10)
+	if info.Verdict != slip.NotJudged {
+		t.Errorf("info row: %s", info.Verdict)
+	}
+}

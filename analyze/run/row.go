@@ -259,7 +259,7 @@ func (r *runner) calibrated(row job.Row, res analyze.Result) analyze.Result {
 	if !slices.Contains(fullScale, res.Unit.Dim) {
 		return res
 	}
-	if lim := row.Limits; lim.Any() {
+	if lim := row.Limits; lim.Any() || row.Check.Params.MaxEach != nil {
 		return res // the limit's unit decides
 	}
 	if r.opt.FullScale {
