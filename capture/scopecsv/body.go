@@ -42,9 +42,10 @@ type lost struct {
 
 // breach is a place where text stands among the samples: before row at.
 type breach struct {
-	at   int
-	line int
-	rows []row // the text rows, at most 64
+	at    int
+	line  int
+	rows  []row // the text rows, at most 64
+	count int   // all text rows
 }
 
 // hole is a place of blank rows among the samples: before row at.
@@ -52,17 +53,18 @@ type hole struct{ at, line, rows int }
 
 // body is the table read.
 type body struct {
-	col      []column
-	n        int
-	breaches []breach
-	holes    []hole // at most maxLost
-	nHoles   int
-	jumps    []jump // where line number - row changes
-	cut      int    // line of a last row that was cut off and left out; 0: none
-	footer   []row
-	short    int // line from which rows end early; 0: none
-	shortAt  int // its row
-	nuls     int
+	col        []column
+	n          int
+	breaches   []breach
+	holes      []hole // at most maxLost
+	nHoles     int
+	jumps      []jump // where line number - row changes
+	cut        int    // line of a last row that was cut off and left out; 0: none
+	footer     []row  // text rows behind the samples, at most 64
+	footerRows int
+	short      int // line from which rows end early; 0: none
+	shortAt    int // its row
+	nuls       int
 }
 
 // jump says that rows from row on stand at lines row + off.
@@ -262,6 +264,7 @@ func (f *file) scan(lay *layout) (*body, error) {
 				t.breaches = append(t.breaches, breach{at: t.n, line: thisLine})
 				open = &t.breaches[len(t.breaches)-1]
 			}
+			open.count++
 			if len(open.rows) < 64 {
 				open.rows = append(open.rows, row{thisLine, rowStart, b[rowStart:rowEnd]})
 			}
@@ -528,7 +531,7 @@ func (t *body) addHole(line, rows int) {
 // single short last row as cut off.
 func (f *file) closeBody(lay *layout, t *body) {
 	if i := len(t.breaches) - 1; i >= 0 && t.breaches[i].at == t.n {
-		t.footer = t.breaches[i].rows
+		t.footer, t.footerRows = t.breaches[i].rows, t.breaches[i].count
 		t.breaches = t.breaches[:i]
 	}
 	switch {

@@ -21,6 +21,10 @@ func (a *assembly) checkBreaches() error {
 			}
 		}
 	}
+	if n := a.t.footerRows; n > 64 && n > a.t.n {
+		r := a.t.footer[0]
+		return a.fault(r.line, recording.ErrFormat, fmt.Sprintf("%s of text follow %s of samples (%q)", plural(n, "row"), plural(a.t.n, "row"), short(words(r.text))), "export the samples alone")
+	}
 	for _, r := range a.t.footer {
 		if err := a.checkStray(r); err != nil {
 			return err

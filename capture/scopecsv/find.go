@@ -270,6 +270,8 @@ func (f *file) findStart(lay *layout, p, line int) error {
 					return nil
 				}
 				stray = line
+			} else if numbersOnly(kinds) && stray == 0 {
+				stray = line
 			}
 			if len(lay.pre) < maxPreamble {
 				lay.pre = append(lay.pre, row{line, p, text})
@@ -311,6 +313,20 @@ func (f *file) stepBack(lay *layout) error {
 
 // filled says whether a row holds more than separators.
 func filled(text []byte) bool { return len(bytes.Trim(text, " \t\x00,;|\"")) > 0 }
+
+// numbersOnly says whether a row holds numbers and no text.
+func numbersOnly(kinds []kind) bool {
+	n := 0
+	for _, k := range kinds {
+		if k == prose {
+			return false
+		}
+		if k == number {
+			n++
+		}
+	}
+	return n > 0
+}
 
 // maxPreamble bounds the rows of settings that are kept.
 const maxPreamble = 4096
