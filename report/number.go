@@ -234,13 +234,21 @@ func Number(x float64) string {
 	return strconv.FormatFloat(x, 'f', -1, 64)
 }
 
-// Digits prints any other number of a sheet to n significant digits.
+// Digits prints any other number of a sheet to at most n significant digits,
+// without trailing zeros.
 func Digits(x float64, n int) string {
-	if x == math.Trunc(x) && math.Abs(x) < 1e9 {
+	a := math.Abs(x)
+	switch {
+	case math.IsNaN(x) || math.IsInf(x, 0):
+		return "-"
+	case x == math.Trunc(x) && a < 1e9:
 		return plain(x)
-	}
-	if a := math.Abs(x); a < 1e-4 || a >= 1e9 {
+	case a < 1e-4 || a >= 1e9:
 		return strconv.FormatFloat(x, 'e', n-1, 64)
 	}
-	return fixed(x, n-1-exponent(x, n))
+	s := fixed(x, n-1-exponent(x, n))
+	if strings.Contains(s, ".") {
+		s = strings.TrimRight(strings.TrimRight(s, "0"), ".")
+	}
+	return s
 }
