@@ -69,6 +69,9 @@ type Options struct {
 	Tone   *Tone // nil: none
 	Orders int   // harmonics of the tone to fit, at least 10
 	Mains  int   // orders of the mains to fit, at least MaxOrder
+	// Supply is another channel of the same take that shows the mains well: its
+	// frequency is used instead of one's own; nil: none.
+	Supply *Lines
 }
 
 // Decompose takes a signal apart, once for each set of options.
@@ -80,6 +83,9 @@ func Decompose(p *analyze.Pass, s *analyze.Signal, o Options) *Lines {
 		id = o.Tone.id
 	}
 	key := fmt.Sprintf("lines/%s/%s/%d/%d/%g", s.ID(), id, o.Orders, o.Mains, mainsNominal(p))
+	if o.Supply != nil {
+		key += "/" + o.Supply.Sig.ID()
+	}
 	return p.Stages.Once(key, func() any { return decompose(p, s, o) }).(*Lines)
 }
 
@@ -155,6 +161,10 @@ func (l *Lines) layout(f *followed, tone *sinefit.Track, o Options) {
 	}
 	if f.MainsHz > 0 {
 		l.MainsTrack = f.Mains
+		if o.Supply != nil && o.Supply.MainsFound && o.Supply.MainsTrack.Len == s.Len() {
+			track := *o.Supply.MainsTrack // a copy: lines know their kind by it
+			l.MainsTrack = &track
+		}
 		if l.MainsTrack == nil {
 			l.MainsTrack = &sinefit.Track{Len: s.Len(), Nu: f.MainsHz / rate, Rigid: true}
 		} else {
