@@ -17,7 +17,7 @@ import (
 type odd struct{ *rand.Rand }
 
 func (o odd) float() float64 {
-	special := []float64{0, -0.0, 1, -1, math.NaN(), math.Inf(1), math.Inf(-1), 1e308, -1e308, 5e-324, 1e-12, 999.9999, 1e15}
+	special := []float64{0, math.Copysign(0, -1), 1, -1, math.NaN(), math.Inf(1), math.Inf(-1), 1e308, -1e308, 5e-324, 1e-12, 999.9999, 1e15}
 	if o.IntN(3) == 0 {
 		return special[o.IntN(len(special))]
 	}
