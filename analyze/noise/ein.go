@@ -29,6 +29,9 @@ func thermal(ohms, kelvins, bandwidthHz float64) float64 {
 	return math.Sqrt(4 * boltzmann * kelvins * ohms * bandwidthHz)
 }
 
+// ownPart is what the unit adds to its source's noise: powers subtract.
+func ownPart(v, thermal float64) float64 { return math.Sqrt(v*v - thermal*thermal) }
+
 // noiseBandwidth is that of a band under a weighting, Hz: the integral of
 // |W(f)|^2, which a white density is multiplied by. Simpson's rule over lg f,
 // where the curves are smooth.
@@ -179,8 +182,8 @@ func beside(p *analyze.Pass, r analyze.Result, v, bandwidthHz float64) analyze.R
 	tStandard := thermal(ohms, standardTemperature, bandwidthHz)
 	r.Details["thermal_dbu"] = dBu.FromLinear(t)
 	r.Details["noise_figure_db"] = dBu.FromLinear(v) - dBu.FromLinear(tStandard)
-	if v*v > 2*t*t { // the unit's own part, where it is the larger one
-		r.Details["amplifier_dbu"] = dBu.FromLinear(math.Sqrt(v*v - t*t))
+	if r.Details["noise_figure_db"].(float64) > 3 { // nearer, the difference is mostly error
+		r.Details["amplifier_dbu"] = dBu.FromLinear(ownPart(v, t))
 	}
 	U, _, _, _ := budget.Expand(r.Budget, 2)
 	lowest := t

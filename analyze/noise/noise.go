@@ -52,21 +52,25 @@ type reading struct {
 	band  stage.Band
 }
 
-// read takes a signal apart (without a test tone: a tone in a noise take
-// counts) and sums everything in the band under the weighting.
+// read takes a signal apart and sums everything in the band under the
+// weighting; a tone in a noise take counts.
 func read(p *analyze.Pass, s *analyze.Signal, b analyze.Band, weighting string) (reading, *analyze.Refusal) {
 	band, bad := ready(s, b)
 	if bad != nil {
 		return reading{}, bad
 	}
-	l := stage.Decompose(p, s, stage.Options{})
+	l := stage.Apart(p, "take", s, 0)
 	return reading{stage.Everything(l, band, stage.Weighting(weighting)), l, band}, nil
 }
 
 // toneFlag names a line that is no mains line and holds over a tenth of the
 // power in the band.
 func (r reading) toneFlag(gain func(float64) float64) []recording.Flag {
-	for _, q := range r.lines.Others {
+	lines := r.lines.Others
+	if f := r.lines.Fundamental(); f != nil {
+		lines = append([]stage.Line{*f}, lines...)
+	}
+	for _, q := range lines {
 		g := 1.0
 		if gain != nil {
 			g = gain(q.Hz)
