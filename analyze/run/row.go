@@ -334,6 +334,9 @@ func (r *runner) complete(c *slip.Check, row job.Row) {
 	if p.Weighting != "" {
 		add("weighting", p.Weighting)
 	}
+	if w, ok := c.Details["weighting"].(string); ok && w == "" {
+		c.Details["weighting"] = "none"
+	}
 	if from, to, ok := stretch(row); ok && len(row.Main) < 2 {
 		add("span_s", []float64{from, to})
 	}

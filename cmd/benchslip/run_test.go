@@ -8,6 +8,8 @@ import (
 	"strings"
 	"testing"
 	"unicode"
+
+	"benchslip/report/json/jsontest"
 )
 
 // everything is a job that reads every small recording.
@@ -61,6 +63,17 @@ func TestSlipBytesAreTheSame(t *testing.T) {
 	want := tree(t, first)
 	if len(want) < 2 {
 		t.Fatalf("only %d files in the slip", len(want))
+	}
+	schema, err := os.ReadFile("../../testdata/slip.schema.json")
+	if err != nil {
+		t.Fatal(err)
+	}
+	faults, err := jsontest.Validate(schema, []byte(want[mainFile]))
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, f := range faults {
+		t.Errorf("slip.json against its schema: %s", f)
 	}
 	same := func(what, out string, args ...string) {
 		t.Helper()
