@@ -90,3 +90,51 @@ func OtherSupply(p *analyze.Pass, l *Lines) float64 {
 	}
 	return 0
 }
+
+// BoundAnywhere is the RMS that the sum over mains orders (each times a power
+// gain) stays below at 95 %, wherever within the supply's range (1 % about the
+// nominal frequency) its frequency lies: the bound of the largest reading of
+// the survey. Places of the tone and other lines read as noise.
+func BoundAnywhere(p *analyze.Pass, l *Lines, orders []int, gains []float64) float64 {
+	v := SurveyOf(p, l.Sig)
+	nominal := mainsNominal(p)
+	if nominal <= 0 {
+		nominal = l.MainsHz
+	}
+	if len(orders) == 0 || nominal <= 0 {
+		return 0
+	}
+	S := append([]float64(nil), v.S...)
+	for _, set := range [][]Line{l.Harm, l.Others} {
+		for _, q := range set {
+			for k := max(int((q.Hz/v.StepHz)-v.Lobe), 0); k <= int(q.Hz/v.StepHz+v.Lobe)+1 && k < len(S); k++ {
+				S[k] = math.Min(S[k], v.Floor[k])
+			}
+		}
+	}
+	K := int(math.Max(1, math.Round(v.Averages)))
+	top := orders[len(orders)-1]
+	most := 0.0
+	spread := make([]float64, 0, K*len(orders))
+	for f := nominal * (1 - supplyRange); f <= nominal*(1+supplyRange); f += v.StepHz / 4 / float64(top) {
+		read := 0.0
+		for i, o := range orders {
+			if k := int(float64(o)*f/v.StepHz + 0.5); k < len(S) {
+				read += gains[i] * S[k] * v.RBW()
+			}
+		}
+		most = math.Max(most, read)
+	}
+	for i, o := range orders {
+		if k := int(float64(o)*nominal/v.StepHz + 0.5); k < len(S) {
+			for range K {
+				spread = append(spread, gains[i]*v.Floor[k]*v.RBW()/float64(K))
+			}
+		}
+	}
+	b, ok := budget.UpperBoundOf(most, spread, 0.95)
+	if !ok {
+		return 0
+	}
+	return b
+}

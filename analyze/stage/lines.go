@@ -3,6 +3,7 @@ package stage
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"benchslip/analyze"
 	"benchslip/analyze/internal/sinefit"
@@ -58,8 +59,9 @@ type Lines struct {
 	// filled from their sides.
 	Noise *spectrum.Density
 	// GapHz is the half width about the fundamental that was filled.
-	GapHz float64
-	Cond  float64 // variance cost of the neighbourhood, 1: none
+	GapHz     float64
+	Cond      float64 // variance cost of the neighbourhood, 1: none
+	reference bool    // see Options
 	// Residual is the mean square of what is left over the whole band.
 	Residual float64
 }
@@ -69,6 +71,9 @@ type Options struct {
 	Tone   *Tone // nil: none
 	Orders int   // harmonics of the tone to fit, at least 10
 	Mains  int   // orders of the mains to fit, at least MaxOrder
+	// Reference: the channel only says what drove the unit. Mains orders that do
+	// not stand out are not fitted and the noise is read in samples of it.
+	Reference bool
 	// Supply is another channel of the same take that shows the mains well: its
 	// frequency is used instead of one's own; nil: none.
 	Supply *Lines
@@ -82,7 +87,7 @@ func Decompose(p *analyze.Pass, s *analyze.Signal, o Options) *Lines {
 	if o.Tone != nil {
 		id = o.Tone.id
 	}
-	key := fmt.Sprintf("lines/%s/%s/%d/%d/%g", s.ID(), id, o.Orders, o.Mains, mainsNominal(p))
+	key := fmt.Sprintf("lines/%s/%s/%d/%d/%v/%g", s.ID(), id, o.Orders, o.Mains, o.Reference, mainsNominal(p))
 	if o.Supply != nil {
 		key += "/" + o.Supply.Sig.ID()
 	}
@@ -90,7 +95,7 @@ func Decompose(p *analyze.Pass, s *analyze.Signal, o Options) *Lines {
 }
 
 func decompose(p *analyze.Pass, s *analyze.Signal, o Options) *Lines {
-	l := &Lines{Sig: s, Tone: o.Tone, Cond: 1}
+	l := &Lines{Sig: s, Tone: o.Tone, Cond: 1, reference: o.Reference}
 	coarse := 0.0
 	var toneTrack *sinefit.Track
 	if o.Tone != nil {
@@ -110,7 +115,7 @@ func decompose(p *analyze.Pass, s *analyze.Signal, o Options) *Lines {
 	}
 	l.layout(f, toneTrack, o)
 	l.fitBlocks()
-	l.measure()
+	l.measure(v)
 	l.refine()
 	return l
 }
@@ -161,9 +166,8 @@ func (l *Lines) layout(f *followed, tone *sinefit.Track, o Options) {
 	}
 	if f.MainsHz > 0 {
 		l.MainsTrack = f.Mains
-		if o.Supply != nil && o.Supply.MainsFound && o.Supply.MainsTrack.Len == s.Len() {
-			track := *o.Supply.MainsTrack // a copy: lines know their kind by it
-			l.MainsTrack = &track
+		if t := o.Supply.supplyTrack(); t != nil && t.Len == s.Len() {
+			l.MainsTrack = t
 		}
 		if l.MainsTrack == nil {
 			l.MainsTrack = &sinefit.Track{Len: s.Len(), Nu: f.MainsHz / rate, Rigid: true}
@@ -178,6 +182,9 @@ func (l *Lines) layout(f *followed, tone *sinefit.Track, o Options) {
 			hz := float64(k) * l.MainsHz
 			if hz >= rate/2 {
 				break
+			}
+			if o.Reference && !slices.Contains(f.Comb.Orders, k) {
+				continue
 			}
 			m := Line{Order: k, Hz: hz, track: l.MainsTrack}
 			m.Dropped = near(hz)
@@ -265,8 +272,8 @@ func (l *Lines) fitBlocks() {
 
 // measure reads the noise that is left and takes its share off the lines'
 // powers.
-func (l *Lines) measure() {
-	l.Noise = l.residual()
+func (l *Lines) measure(v *Survey) {
+	l.Noise = l.residual(v)
 	l.fill()
 	T := l.Sig.DurationS()
 	for _, q := range l.all() {
