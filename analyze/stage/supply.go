@@ -69,10 +69,33 @@ func (c *comb) faint(v *Survey, skip func(hz float64) bool) {
 		if j < 1 || j+1 >= len(v.S) {
 			return
 		}
-		if !skip(hz) && !slices.Contains(c.Orders, o) && v.S[j] > limit*v.Floor[j] {
+		if !skip(hz) && !slices.Contains(c.Orders, o) && v.S[j] > limit*v.Floor[j] && !v.onSkirt(hz) {
 			c.Faint = append(c.Faint, o)
 		}
 	}
+}
+
+// onSkirt: a peak stands beside hz, so near that the window's lobe reaches
+// there, and not at hz itself.
+func (v *Survey) onSkirt(hz float64) bool {
+	lobe := (v.Lobe + 1) * v.StepHz
+	for _, p := range v.Peaks {
+		if d := math.Abs(p.Hz - hz); d < lobe {
+			return d > 1.5*v.ToleranceHz()
+		}
+	}
+	return false
+}
+
+// underSkirt: a peak stands so near that its main lobe, or its first
+// sidelobes where it is strong, may be what is read at hz.
+func (v *Survey) underSkirt(hz float64) bool {
+	for _, q := range v.Peaks {
+		if math.Abs(q.Hz-hz) < 1.5*v.Lobe*v.StepHz {
+			return true
+		}
+	}
+	return false
 }
 
 // says is the sum over orders of power over noise at the multiples of f.
@@ -85,7 +108,7 @@ func (c *comb) says(v *Survey, f float64, skip func(hz float64) bool) float64 {
 		if j < 1 || j+1 >= len(v.S) {
 			break
 		}
-		if skip(hz) || v.Floor[j] <= 0 {
+		if skip(hz) || v.Floor[j] <= 0 || v.onSkirt(hz) {
 			continue
 		}
 		// Parabola through three bins in the logarithm, as for peaks.

@@ -44,9 +44,7 @@ func newBench(seed uint64, full bool) *bench {
 	b.scale = u * b.NormFloat64()
 	if b.IntN(2) == 0 {
 		b.gear.ChannelMatch = b.logarithmic(0.0005, 0.01)
-		for i := range b.match {
-			b.match[i] = b.gear.ChannelMatch / math.Sqrt2 * b.NormFloat64()
-		}
+		b.match[1] = b.gear.ChannelMatch * b.NormFloat64() // channel 1 was calibrated
 	}
 	b.gear.OffsetU = b.logarithmic(1e-4, 1e-2) * b.full
 	b.offset = b.gear.OffsetU * b.NormFloat64()
