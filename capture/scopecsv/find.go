@@ -181,16 +181,17 @@ func (f *file) findColumns(lay *layout, rows []sampled) error {
 // otherClock says whether a row is one of samples but for a number where the
 // others have a clock time, or the other way round.
 func (lay *layout) otherClock(kinds []kind) bool {
-	alien := false
+	alien, fits := false, false
 	for c, k := range kinds {
 		if c < lay.width && lay.core[c] {
 			if k != number && k != clock {
 				return false
 			}
 			alien = alien || lay.alien(c, k)
+			fits = fits || k == number && !lay.clock[c]
 		}
 	}
-	return alien && len(kinds) >= lay.width
+	return alien && fits && len(kinds) >= lay.width
 }
 
 func (f *file) twoClocks(r row) error {
@@ -214,11 +215,13 @@ func (lay *layout) isData(kinds []kind) bool {
 		}
 	}
 	any := false
+	named := false // text further left: a setting beside the samples has its own value and unit
 	for c, k := range kinds[:min(len(kinds), lay.width)] {
 		if !lay.core[c] {
-			if k == prose && c == lay.first-1 {
+			if k == prose && c == lay.first-1 && !named {
 				return false // a setting: its value stands in the first column of numbers
 			}
+			named = named || k == prose
 			continue
 		}
 		if k == prose || lay.alien(c, k) {
@@ -302,7 +305,7 @@ func (f *file) stepBack(lay *layout) error {
 		if lay.otherClock(kinds) {
 			return f.twoClocks(r)
 		}
-		if len(buf) < lay.width {
+		if len(buf) < lay.width || lay.alien(lay.first, kinds[lay.first]) {
 			return nil
 		}
 		lay.pre = lay.pre[:len(lay.pre)-1]

@@ -38,6 +38,10 @@ func (f *file) findHeads(lay *layout, numeric []bool) (*heads, error) {
 			marker = true
 			continue
 		}
+		if couplings(cells) {
+			h.pre = append(h.pre, i)
+			continue
+		}
 		if units == nil && f.isUnits(lay, cells, numeric) {
 			units, unitsLine = cells, i
 			h.pre = append(h.pre, i)
@@ -232,6 +236,18 @@ func (f *file) isUnits(lay *layout, cells []string, numeric []bool) bool {
 	return n > 0
 }
 
+// couplings says whether a row holds nothing but couplings and switches.
+func couplings(cells []string) bool {
+	for _, t := range cells {
+		switch strings.ToLower(strings.Trim(t, "()[] ")) {
+		case "", "dc", "ac", "gnd", "on", "off":
+		default:
+			return false
+		}
+	}
+	return true
+}
+
 // isNames says whether a row can be the names over the samples.
 func (f *file) isNames(lay *layout, cells []string, numeric []bool, units, marker bool) bool {
 	first, filled := true, 0
@@ -258,6 +274,11 @@ func (f *file) isNames(lay *layout, cells []string, numeric []bool, units, marke
 	}
 	if filled == 0 || marker && !known {
 		return false
+	}
+	for i, t := range over {
+		if strings.Contains(t, "=") || i == 0 && strings.HasSuffix(t, ":") && !known {
+			return false
+		}
 	}
 	// "Vertical Units,V" before two columns is a setting, not a header; and so
 	// is a setting whose name is known.

@@ -223,7 +223,7 @@ func (m *timing) normal(steps []float64) (low, high float64) {
 }
 
 // evenlySpaced says whether the steps of k ticks stand at distances that
-// differ by at most one.
+// differ by at most one, or by what exact ties may shift them.
 func evenlySpaced(steps []float64, k int, tick func(float64) int) bool {
 	last, least, most := -1, len(steps), 0
 	for i, d := range steps {
@@ -235,7 +235,7 @@ func evenlySpaced(steps []float64, k int, tick func(float64) int) bool {
 		}
 		last = i
 	}
-	return most-least <= 1
+	return most-least <= 2+least/50
 }
 
 // fit is the common slope of time on row of all stretches between breaks, by
@@ -278,10 +278,13 @@ func (m *timing) fit(t []float64) float64 {
 }
 
 // residuals compares each stamp with its stretch's line. A stamp is even when
-// it lies within 0.75 of a unit (rounding or cutting digits both leave half a
-// unit about the mean line) plus 1e-4 of a step.
+// it lies within a unit of its last digit: half for rounding or cutting digits,
+// the rest for a line bent by ties that round one way before and another way
+// behind zero. Added are 1e-4 of a step and what the coarsest stamps leave the
+// line itself uncertain by.
 func (m *timing) residuals(t []float64, unit func(float64) float64) {
 	m.even, m.usable = true, true
+	line := m.q * math.Max(0.2, 1/math.Sqrt(float64(len(t))))
 	coarse := m.repeats > 0 && m.q > 0.2*m.step
 	sum, count := 0.0, 0
 	from := 0
@@ -317,7 +320,7 @@ func (m *timing) residuals(t []float64, unit func(float64) float64) {
 			if coarse {
 				q = math.Max(q, m.q)
 			}
-			if r > 0.75*q+1e-4*m.step+4.5e-16*math.Abs(t[i]) {
+			if r > q+line+1e-4*m.step+4.5e-16*math.Abs(t[i]) {
 				m.even = false
 			}
 			if r > 0.5*m.step+q {

@@ -95,8 +95,8 @@ type header struct {
 // readHeader takes the unit out of a column's name: in brackets at the end,
 // or glued on with an underscore, a blank, a slash or a comma.
 func readHeader(text string) header {
-	h := header{full: text, name: text}
-	t := strings.TrimSpace(text)
+	t := strings.TrimRight(strings.TrimSpace(text), ": ")
+	h := header{full: text, name: t}
 	if q, f := unitOf(t); q != unknown && q != other && !bareWord(t) {
 		h.unit, h.q, h.f, h.from = t, q, f, "its header"
 		return h

@@ -370,5 +370,29 @@ bad("frequency-behind-row-numbers", "#,Frequency in Hz,Gain in dB\n" + "".join("
 ok("x-and-y", "x,y\n" + rows(t6, a), 1e4, [nm(A, "y")], frames=N)
 ok("settings-in-the-middle", "Time,CH1\n" + rows(t6[:30], a[:30]) + "Model,B4\nSample Interval,1E-4\n" + rows(t6[30:], a[30:]), 1e4, [A], frames=N, flags=["gap"])
 
+unit = ["Points", "s", "Samples", "s"]
+ok("settings-beside-with-units", "".join('%s%s,%s\n' % ('"%s",%s,%s,' % (side[i][0], side[i][1], unit[i] if i < 4 else "") if i < len(side) else ",,,", tn[i], a[i]) for i in range(N)),
+   1e4, [nm(A, "")], start=-0.003, frames=N)
+ok("settings-beside-under-header", "Model,B4,,TIME,CH1\nSN,17,,s,mV\n" + "".join("%s%s,%s\n" % (["Record Length,%d,," % N, "Sample Interval,1e-4,,"][i] if i < 2 else ",,,", tn[i], a[i]) for i in range(N)),
+   1e4, [chan("CH1", a, 1e-3)], start=-0.003, frames=N)
+ok("export-index-aligned", "Save Time : 2026-12-01 12:00:00\nTime Base : 1.0ms\nSampling Rate : 10KSa/s\nAmplitude : 1.0V\nFrequency : 477.5Hz\nUnit : (mV)\n\n"
+   "index                CH1_Voltage(mV)      CH2_Voltage(mV)\n" + "".join("%-20d %-20s %s\n" % (i, a[i], b[i]) for i in range(N)), 1e4,
+   [chan("CH1_Voltage", a, 1e-3), chan("CH2_Voltage", b, 1e-3)], frames=N)
+ok("export-label-row", "Model,M4\nFirmware Version,1\n\nPoint Format,Y,\nHorizontal Units,s,\nHorizontal Scale,4e-05,\nSample Interval,1e-04,\nRecord Length,%d,\nGating,0.0%% to 100.0%%,\nProbe Attenuation,1,\n"
+   "Vertical Units,V,\nVertical Offset,0,\nVertical Scale,0.5,\nVertical Position,-0.1,\n,,\n,,\n,,\nLabel,,\nTIME,CH1,\n" % N + rows(t6, a, tail=","), 1e4, [A], frames=N)
+ok("export-quoted-axis-settings", '"Title","Output"\n"X Unit:","s"\n"Y Unit:","V"\n"X At 0%%:","0.0"\n"X Resolution:","1.00000E-04"\n"X Size:","%d"\n"X Label:","100 us/Div"\n\n' % N
+   + "".join('"%s","%s"\n' % r for r in zip(t6, a)), 1e4, [nm(A, "")], frames=N)
+ok("export-runs-side-by-side", "Run 1: Time (s),Run 1: Potential (V),Run 2: Time (s),Run 2: Potential (V)\n" + rows(t6, a, t6, b), 1e4,
+   [nm(A, "Run 1: Potential"), nm(B, "Run 2: Potential")], frames=N)
+ok("export-in-s-in-v", "in s,C1 in V,C2 in mV\n" + rows(t6, a, b), 1e4, [nm(A, "C1 in V"), chan("C2 in mV", b, 1e-3)], frames=N)
+ok("export-coupling-row", "Time,CH1,CH2\ns,V,mV\nDC,DC,AC\n" + rows(t6, a, b), 1e4, [A, chan("CH2", b, 1e-3)], frames=N)
+ok("export-start-clock-rows", "".join("12:00:0%d\n" % s + rows(t6[:20], a[20 * s:20 * s + 20]) for s in range(3)), 1e4, [nm(A, "")], frames=N, flags=["gap"], joints=[20, 40])
+ok("export-start-date-row", "01.12.2026;12:00:00\n" + rows(t6, a, sep=";"), 1e4, [nm(A, "")], frames=N)
+ok("export-time-and-spectrum", "Time (s),CH1 (V),Frequency (Hz),FFT (dBV)\n" + "".join("%s,%s,%s,%s\n" % (t6[i], a[i], i * 100 if i < 30 else "", b[i] if i < 30 else "") for i in range(N)), 1e4,
+   [A, chan("Frequency", ["%d" % (i * 100) for i in range(30)], 1, ""), chan("FFT", b[:30], 1, "")], frames=N, flags=["overrange", "uncalibrated"])
+seg = "Channels\t1\t\nSamples\t30\t\nDate\t2026/12/01\t\nTime\t12:00:0%d.5\t\nY_Unit_Label\tVolts\t\nX_Dimension\tTime\t\nX0\t0.0\t\nDelta_X\t1.000000E-4\t\n***End_of_Header***\t\t\nX_Value\tVoltage\tComment\n"
+ok("export-segments-with-headers", "Measurement\t\nSeparator\tTab\nMulti_Headings\tYes\nDate\t2026/12/01\nTime\t12:00:00.1\n***End_of_Header***\t\n\t\n" + seg % 1 + rows(t6[:30], a[:30], sep="\t")
+   + "\t\t\n" + seg % 2 + rows(t6[:30], a[30:], sep="\t"), 1e4, [nm(A, "Voltage")], frames=N, flags=["gap"], joints=[30])
+
 json.dump(truth, open(os.path.join(here, "shapes.json"), "w"), indent=1, sort_keys=True)
 print(len(truth), "shapes")
