@@ -55,7 +55,7 @@ func ListenAt(p *analyze.Pass, t *analyze.Take, role string, at float64, orders 
 		return nil, bad
 	}
 	if h.In != nil {
-		h.Li = Decompose(p, h.In, Options{Tone: h.Tone})
+		h.Li = Decompose(p, h.In, Options{Tone: h.Tone, Reference: true})
 		if bad := Present(h.Li); bad != nil {
 			return nil, bad
 		}

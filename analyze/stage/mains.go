@@ -56,7 +56,11 @@ func findComb(v *Survey, nominalHz, durationS float64, skip func(hz float64) boo
 		}
 	}
 	if nominalHz > 0 || len(best.Orders) > 0 {
-		best.settle(v, nearest(tries, best.Hz), skip)
+		nominal := nearest(tries, best.Hz)
+		best.settle(v, nominal, skip)
+		if best.Hz > 0 && len(best.Orders)+len(best.Faint) == 0 {
+			best.Hz = nominal // nothing shows: no better guess
+		}
 	}
 	return best
 }

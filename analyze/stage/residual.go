@@ -8,31 +8,46 @@ import (
 	"benchslip/analyze/internal/spectrum"
 )
 
-// residual is the density of the signal less DC and every fitted line.
+// longSpan is the length in s from which on averages are so many that half
+// overlap, and a power of two near 2 s, lose nothing worth their cost.
+const longSpan = 30
+
+// residual is the density of the signal less DC and the lines that stand out.
 // Segments of an eighth of the span, 2 s at most, three quarters overlapped:
 // with that overlap every sample but those at the two ends counts alike, which
-// costs a tenth of the averages at most.
-func (l *Lines) residual() *spectrum.Density {
+// costs a tenth of the averages at most. Long spans overlap by half. Of a
+// reference channel 32 segments are read, enough for the noise beside its
+// tone.
+func (l *Lines) residual(v *Survey) *spectrum.Density {
 	s := l.Sig
 	n := s.Len()
 	m := spectrum.FastLength(max(min(int(2*s.RateHz), n/8), min(n, 64)))
 	hop := max(m/4, 1)
+	if s.DurationS() >= longSpan {
+		for m = 1; 2*m <= int(2*s.RateHz); m *= 2 {
+		}
+		hop = m / 2
+	}
+	if l.reference && hop < n/32 {
+		hop = n / 32
+	}
 	w := spectrum.BlackmanHarris(m)
-	power, count := 0.0, 0
-	r := l.newRemover(l.all())
+	power, count, next := 0.0, 0, 0
+	r := l.newRemover(l.standing(v, float64(w.NENBW)*s.RateHz/float64(m)))
 	src := func(dst []float64, at int) int {
 		k := s.Read(dst, at)
 		r.take(dst[:k], at)
-		for _, v := range dst[:k] {
-			power += v * v
+		for _, x := range dst[:k] {
+			power += x * x
 		}
 		count += k
+		next = at + k
 		return k
 	}
 	d := spectrum.Welch(src, n, s.RateHz, w, m, hop)
 	rest := make([]float64, 4096) // the tail that fills no segment
-	for count < n {
-		if src(rest, count) == 0 {
+	for next < n && !l.reference {
+		if src(rest, next) == 0 {
 			break
 		}
 	}
@@ -40,6 +55,28 @@ func (l *Lines) residual() *spectrum.Density {
 		l.Residual = power / float64(count)
 	}
 	return d
+}
+
+// standing lists the lines worth taking off before the noise is read: all but
+// those mains orders that the noise alone could make, where the resolution
+// leaves sides beside every line to fill its place from.
+func (l *Lines) standing(v *Survey, rbwHz float64) []*Line {
+	if rbwHz >= fineHz {
+		return l.all()
+	}
+	var out []*Line
+	M := float64(len(l.Blocks))
+	for _, q := range l.all() {
+		if l.isMains(q) {
+			k := min(int(q.Hz/v.StepHz+0.5), len(v.Floor)-1)
+			share := v.Floor[k] * l.Sig.RateHz / float64(l.Blocks[0].To-l.Blocks[0].From)
+			if l.meanPower(q.Blocks, 1) < share*(1+2/math.Sqrt(M)) {
+				continue
+			}
+		}
+		out = append(out, q)
+	}
+	return out
 }
 
 // remover takes DC and lines off samples read in order.
@@ -62,33 +99,52 @@ func (l *Lines) newRemover(lines []*Line) *remover {
 
 // take works on samples that start at index at.
 func (r *remover) take(y []float64, at int) {
-	l := r.l
 	for i := range y {
-		y[i] -= l.DC
+		y[i] -= r.l.DC
 	}
-	for from := 0; from < len(y); from += sinefit.Piece {
-		part := y[from:min(from+sinefit.Piece, len(y))]
+	for from := 0; from < len(y); {
 		first := at + from
-		for first < l.Blocks[r.block].From {
+		for first < r.l.Blocks[r.block].From {
 			r.block--
 		}
-		for first >= l.Blocks[r.block].To {
+		for first >= r.l.Blocks[r.block].To {
 			r.block++
 		}
-		middle := l.Blocks[r.block].Middle()
-		half := float64(len(part)-1) / 2
-		for i, q := range r.lines {
-			order := float64(q.Order)
-			if r.fixed[i] {
-				z := q.Z * sinefit.Phasor(q.track.OrderTurns(order, float64(first)))
-				r.osc[i].Subtract(part, order*q.track.Nu, z)
-				continue
-			}
-			// Phase exact at the stretch's middle, frequency that of the block.
-			nu := order * q.track.NuAt(middle)
-			mid := float64(first) + half
-			turn := q.track.OrderTurns(order, mid) - nu*half
-			r.osc[i].Subtract(part, nu, l.between(q.Blocks, mid)*sinefit.Phasor(turn))
+		// Stretches within one block, of at most 16 pieces.
+		to := min(len(y), from+16*sinefit.Piece, from+r.l.Blocks[r.block].To-first)
+		r.stretch(y[from:to], first)
+		from = to
+	}
+}
+
+// stretch takes the lines off samples of one block. Each line's phase is
+// exact at both ends and runs at the block's frequency from piece to piece;
+// its amplitude is interpolated.
+func (r *remover) stretch(y []float64, first int) {
+	l := r.l
+	middle := l.Blocks[r.block].Middle()
+	pieces := (len(y) + sinefit.Piece - 1) / sinefit.Piece
+	for i, q := range r.lines {
+		order := float64(q.Order)
+		nu := order * q.track.Nu
+		z, end := q.Z, q.Z
+		if !r.fixed[i] {
+			nu = order * q.track.NuAt(middle)
+			z = l.between(q.Blocks, float64(first))
+			end = l.between(q.Blocks, float64(first+len(y)))
+		}
+		// What the block's frequency misses over the stretch is shared evenly.
+		start := q.track.OrderTurns(order, float64(first))
+		missed := q.track.OrderTurns(order, float64(first+len(y))) - start - sinefit.Turns(nu, float64(len(y)))
+		missed -= math.Round(missed)
+		step := complex(1, 0)
+		turn := sinefit.Phasor(sinefit.Turns(nu, sinefit.Piece) + missed*sinefit.Piece/float64(len(y)))
+		w := sinefit.Phasor(start)
+		dz := (end - z) / complex(float64(pieces), 0)
+		for from := 0; from < len(y); from += sinefit.Piece {
+			r.osc[i].Subtract(y[from:min(from+sinefit.Piece, len(y))], nu, z*w*step)
+			step *= turn
+			z += dz
 		}
 	}
 }
@@ -131,6 +187,9 @@ func (l *Lines) between(z []complex128, i float64) complex128 {
 	return z[m-1]*complex(1-f, 0) + z[m]*complex(f, 0)
 }
 
+// fineHz is the resolution bandwidth that leaves sides between mains lines.
+const fineHz = 4
+
 // fill replaces the density at every fitted line, where the fit took noise
 // away too, by the mean of its sides; about the fundamental over the gap.
 func (l *Lines) fill() {
@@ -146,7 +205,7 @@ func (l *Lines) fill() {
 			touched[k] = true
 		}
 	}
-	fine := d.RBW() < 4 // Hz: narrow enough to leave sides between the lines
+	fine := d.RBW() < fineHz
 	if fine {
 		for _, q := range l.all() {
 			touch(q.Hz, half*d.StepHz)

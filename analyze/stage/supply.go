@@ -81,18 +81,7 @@ func (v *Survey) onSkirt(hz float64) bool {
 	lobe := (v.Lobe + 1) * v.StepHz
 	for _, p := range v.Peaks {
 		if d := math.Abs(p.Hz - hz); d < lobe {
-			return d > 1.5*v.ToleranceHz()
-		}
-	}
-	return false
-}
-
-// underSkirt: a peak stands so near that its main lobe, or its first
-// sidelobes where it is strong, may be what is read at hz.
-func (v *Survey) underSkirt(hz float64) bool {
-	for _, q := range v.Peaks {
-		if math.Abs(q.Hz-hz) < 1.5*v.Lobe*v.StepHz {
-			return true
+			return d > v.ToleranceHz()
 		}
 	}
 	return false

@@ -12,7 +12,7 @@ import (
 
 // Survey is a first look at a signal: an averaged periodogram with a
 // low-leakage window (Blackman-Harris, sidelobes -92 dB), segments of 2 s or
-// the whole of a shorter signal, and the peaks that stand out of it.
+// the whole of a shorter signal (64 spread over a long one), and the peaks that stand out of it.
 type Survey struct {
 	*spectrum.Density
 	Floor []float64 // density without lines
@@ -35,7 +35,7 @@ func survey(s *analyze.Signal) *Survey {
 	if n < 3*m {
 		length = spectrum.FastLengthUp(2 * m)
 	}
-	hop := m
+	hop := max(m, n/64) // long signals: 64 looks
 	if n < 8*m {
 		hop = m / 2
 	}
