@@ -1,6 +1,9 @@
 package spectrum
 
-import "math"
+import (
+	"math"
+	"math/cmplx"
+)
 
 // Weighting returns the power gain |W(f)|^2 of a named curve, 1 at 1 kHz
 // exactly: "A", "C" (IEC 61672-1:2013, Annex E, pole formula), "468" (ITU-R
@@ -53,9 +56,20 @@ func aCurve(f float64) float64 {
 
 // curve468 is the amplitude response of the BS.468-4 network, which peaks by
 // 12.2 dB at 6.3 kHz.
-func curve468(f float64) float64 {
+func curve468(f float64) float64 { return cmplx.Abs(rational468(f)) }
+
+// rational468 is the network of BS.468-4 Fig. 1a in closed form, a zero at 0
+// and six poles: s/(polynomial of s) at s = j 2 pi f, its even powers in h1,
+// the odd ones in h2.
+func rational468(f float64) complex128 {
 	f2 := f * f
 	h1 := 1 - 1.363894795463638e-7*f2 + 2.043828333606125e-15*f2*f2 - 4.737338981378384e-24*f2*f2*f2
 	h2 := f * (5.559488023498642e-4 - 2.118150887518656e-11*f2 + 1.306612257412824e-19*f2*f2)
-	return 1.246332637532143e-4 * f / math.Hypot(h1, h2)
+	return complex(0, 1.246332637532143e-4*f) / complex(h1, h2)
+}
+
+// Network468 is the complex response of the BS.468-4 weighting network, 0 dB
+// at 1 kHz, exp(+j w t).
+func Network468(hz float64) complex128 {
+	return rational468(hz) / complex(curve468(1000), 0)
 }
