@@ -1,10 +1,14 @@
 // Package hum holds the measures of mains hum: the comb of harmonics, single
-// orders, hum against noise, and the mains frequency itself.
+// orders, hum against noise, pick-up of a cable run, and the mains frequency
+// itself; and what they say about where hum comes from.
 //
 // The comb is tracked in blocks of about 1 s and fitted jointly with any test
 // tone. Phases of real hum wander against the fundamental, so an order's power
-// is the mean of its block powers along the track, with the noise share of
-// each block (density at the line's sides times 1/T_b) taken off.
+// is the mean of powers along the track, of blocks where the line is weak and
+// of shorter parts where it is strong, each with its noise share (density at
+// the line's sides over the length) taken off. For a steady line of amplitude
+// A in white noise this reaches the Cramer-Rao bound var A = 2 sigma^2/N, but
+// for a factor 1 + s/(2 P), s the noise share of a block, P the line's power.
 package hum
 
 import (
@@ -19,125 +23,30 @@ import (
 )
 
 var (
-	volt  = unit.MustLookup("V")
-	dBFS  = unit.MustLookup("dBFS")
-	dB    = unit.MustLookup("dB")
-	hertz = unit.MustLookup("Hz")
+	volt     = unit.MustLookup("V")
+	dBFS     = unit.MustLookup("dBFS")
+	dB       = unit.MustLookup("dB")
+	dBu      = unit.MustLookup("dBu")
+	hertz    = unit.MustLookup("Hz")
+	perMetre = unit.MustLookup("V/m")
 )
-
-// falseAlarm is the probability that noise passes for a line, over all lines
-// asked.
-const falseAlarm = 1e-3
 
 // Measures lists the measures of this package.
 func Measures() []*analyze.Measure {
-	return []*analyze.Measure{hum, humRatio, mainsFrequency}
+	return []*analyze.Measure{hum, humRatio, pickup, mainsFrequency}
 }
 
-// lines takes a signal apart and makes sure that it can show the mains.
-func lines(p *analyze.Pass, s *analyze.Signal, orders int) (*stage.Lines, *analyze.Refusal) {
-	nominal := p.MainsHz
-	if nominal == 0 {
-		nominal = 50
-	}
-	if T := s.DurationS(); T*nominal < 10 {
-		return nil, &analyze.Refusal{Code: analyze.TooShort,
-			Text:   fmt.Sprintf("take %q holds %.3g periods of the mains, 10 are needed", s.Take.Name, T*nominal),
-			Advice: fmt.Sprintf("record %.3g s or more", math.Max(10, 10/nominal))}
-	}
-	tone, _ := stage.FindTone(p, 0, s)
-	if tone != nil && ofComb(p, s, tone) {
-		tone = nil
-	}
-	l := stage.Decompose(p, s, stage.Options{Tone: tone, Mains: orders})
-	if len(l.Mains) == 0 {
-		return nil, &analyze.Refusal{Code: analyze.TooShort,
-			Text:   fmt.Sprintf("take %q is too short, or its rate too low, to show the mains", s.Take.Name),
-			Advice: "record 10 s or more"}
-	}
-	if l.Rival > 0 {
-		return nil, &analyze.Refusal{Code: analyze.AmbiguousTone,
-			Text:   fmt.Sprintf("take %q holds hum of %.4g Hz and of %.4g Hz of like size", s.Take.Name, l.MainsHz, l.Rival),
-			Advice: "state the supply with [mains] frequency"}
-	}
-	return l, nil
-}
-
-// A line on a mains order passes for hum while the comb's other orders hold
-// over 1/400 of its power (26 dB): hum of one order alone is rare, a test tone
-// that shy of the hum more so. A line without company counts as hum only when
-// it is weak, under 300 times the noise of one resolution bandwidth.
-const (
-	company = 400
-	weak    = 300
-)
-
-// ofComb tells a harmonic of hum from a test tone: it lies on a mains order,
-// and has the company of others that are not its own multiples.
-func ofComb(p *analyze.Pass, s *analyze.Signal, tone *stage.Tone) bool {
-	v := stage.SurveyOf(p, s)
-	near := func(hz float64) float64 { return 2*v.ToleranceHz() + 4e-4*hz }
-	gap, order := stage.NearMains(tone.Hz, tone.MainsHz, stage.MaxOrder)
-	top, ok := v.StrongestIn(tone.Hz-near(tone.Hz), tone.Hz+near(tone.Hz), nil)
-	if !ok {
-		return false
-	}
-	others := 0.0
-	for _, q := range v.Peaks {
-		gap, k := stage.NearMains(q.Hz, tone.MainsHz, stage.MaxOrder)
-		if gap <= near(q.Hz) && k%order != 0 {
-			others += q.Power
-		}
-	}
-	if others > 0 {
-		return gap <= near(tone.Hz) && top.Power < company*others
-	}
-	// Alone, the order's place is known no better than the supply's frequency.
-	return gap <= near(tone.Hz)+0.004*tone.Hz && top.Power < weak*top.Floor*v.RBW()
-}
-
-// comb is a set of mains orders, summed.
-type comb struct {
-	stage.Power
-	lines  []stage.Line
-	shares []float64
-	read   float64
-	seen   bool
-}
-
-func sum(l *stage.Lines, order, top int, gain func(float64) float64, within func(stage.Line) bool) comb {
-	var c comb
-	for _, q := range l.Mains {
-		if order > 0 && q.Order != order || q.Order > top || within != nil && !within(q) {
-			continue
-		}
-		c.lines = append(c.lines, q)
-	}
-	v := 0.0
-	for _, q := range c.lines {
-		if q.Dropped {
-			continue
-		}
-		g := 1.0
-		if gain != nil {
-			g = gain(q.Hz)
-		}
-		c.P += g * q.Power
-		v += g * q.U * g * q.U
-		c.read += g * (q.Power + q.Share)
-		c.shares = append(c.shares, g*q.Share)
-		c.seen = c.seen || stage.MainsDetected(l, q, len(c.lines))
-	}
-	c.U = math.Sqrt(v)
-	return c
-}
+// defaultOrders is how many orders hum has unless the job says otherwise.
+const defaultOrders = 20
 
 var hum = &analyze.Measure{
 	Name:  "hum",
 	Title: "mains hum",
 	Doc: "Root of the sum of the powers of mains harmonics 1 to `harmonics` (20 unless stated) below half the sample rate, each with its noise share taken off, " +
-		"or of the one of `order`. The mains frequency is followed through the take; the band does not matter. With `gain` or `gain_take` the value is referred " +
-		"to the unit's input, else it is the voltage at the recorder's input.",
+		"or of the one of `order`. The mains frequency is followed through the take, with the help of a reference channel where `mains` names one; the band " +
+		"does not matter. With `gain` or `gain_take` the value is referred to the unit's input, else it is the voltage at the recorder's input; harmonics in " +
+		"the details stay at the recorder, their `input` columns at the unit's input. `floor` is taken off by power. `baseline` leaves the value alone: what " +
+		"the run adds to it, and whether cable or receiver is to blame, stands beside it. `max_each` is a limit for every single harmonic.",
 	Formula:  "U_hum = sqrt(sum_h U_h^2)",
 	Standard: "common practice; compare the grouping of IEC 61000-4-7",
 	Unit:     "V",
@@ -153,277 +62,285 @@ func rmsUnit(s *analyze.Signal) unit.Unit {
 	return volt
 }
 
+func spanOf(s *analyze.Signal) []float64 { return []float64{s.StartS, s.StartS + s.DurationS()} }
+
+// highest is the top order that a check asks for.
+func highest(p *analyze.Params) int {
+	top := p.Harmonics
+	if top == 0 {
+		top = defaultOrders
+	}
+	return max(top, p.Order)
+}
+
 func runHum(p *analyze.Pass) analyze.Result {
 	s, bad := p.Signal("take", "out")
 	if bad != nil {
 		return analyze.RefuseWith(volt, bad)
 	}
 	u := rmsUnit(s)
-	top := p.Params.Harmonics
-	if top == 0 {
-		top = 20
-	}
-	top = max(top, p.Params.Order)
-	l, bad := lines(p, s, top)
+	top := highest(p.Params)
+	r, bad := read(p, "take", s, top)
 	if bad != nil {
 		return analyze.RefuseWith(u, bad)
 	}
-	gain := stage.Weighting(p.Params.Weighting)
-	c := sum(l, p.Params.Order, top, gain, nil)
-	if len(c.shares) == 0 {
-		if len(c.lines) > 0 {
-			return analyze.Refuse(u, analyze.AmbiguousTone, fmt.Sprintf("order %d (%.5g Hz) lies under the test tone", c.lines[0].Order, c.lines[0].Hz), "record without the tone")
-		}
-		return analyze.Refuse(u, analyze.Bandwidth, fmt.Sprintf("no order asked lies below half the rate of take %q", s.Take.Name), "record at a higher rate")
+	weight := stage.Weighting(p.Params.Weighting)
+	c := r.sum(p.Params.Order, top, weight, nil)
+	if bad := readable(r, c); bad != nil {
+		return analyze.RefuseWith(u, bad)
 	}
-	v := math.Sqrt(math.Max(c.P, 0))
-	var own budget.Budget
-	if v > 0 {
-		own.A("noise at the lines", c.U/(2*v), 0)
-		own.B("converter steps", stage.StepU(l)/math.Sqrt2)
-		own.Scale(s, v)
+	g, referred, bad := stage.InputGain(p)
+	if bad != nil {
+		return analyze.RefuseWith(u, bad)
 	}
-	r := analyze.Result{Unit: u, FullScaleSine: s.FullScaleSine()}
-	r.Value = &v
-	own.Into(&r)
-	r.Details = map[string]any{"mains_hz": l.MainsHz, "harmonics": list(l, c), "span_s": []float64{s.StartS, s.StartS + s.DurationS()},
-		"weighting": p.Params.Weighting, "detector": "RMS", "referred_to": "recorder input"}
-	r.Figures = []analyze.Figure{combFigure(l, c), stage.SpectrumFigure(p, l)}
-	for _, q := range c.lines {
-		if q.Dropped {
-			r.Flags = append(r.Flags, stage.ToneOnMainsFlag(l, q.Order))
-		}
-	}
-	if f := unlike(p, l); f != nil {
-		r.Flags = append(r.Flags, *f)
-	}
+	res := analyze.Result{Unit: u, FullScaleSine: s.FullScaleSine()}
+	res.Details = map[string]any{"mains_hz": r.hz, "harmonics": list(r, c, g, referred, p.Params.RefLevel), "span_s": spanOf(s),
+		"weighting": p.Params.Weighting, "detector": "RMS"}
+	var floor *reading
 	f, floored, bad := stage.TakeFloor(p, c.Power, func(s *analyze.Signal) (stage.Power, *analyze.Refusal) {
-		l, bad := lines(p, s, top)
-		if bad != nil {
+		var bad *analyze.Refusal
+		if floor, bad = read(p, "floor", s, top); bad != nil {
 			return stage.Power{}, bad
 		}
-		return sum(l, p.Params.Order, top, gain, nil).Power, nil
+		return floor.sum(p.Params.Order, top, weight, nil).Power, nil
 	})
 	if bad != nil {
 		return analyze.RefuseWith(u, bad)
 	}
-	if !c.seen {
-		bound, ok := stage.MainsBound(l, c.read, c.shares)
-		if !ok {
-			bound = budget.SumThreshold(c.shares, falseAlarm)
+	var own budget.Budget
+	if c.seen && c.P > 0 {
+		v := math.Sqrt(c.P)
+		own = rmsBudget(r, v, c.Power)
+		res.Value = &v
+		own.Into(&res)
+		if floored {
+			res = stage.Floor(res, f)
 		}
-		r.Value, r.Budget = nil, nil
-		r.Bound = &analyze.Bound{Upper: true, Value: bound}
-		r.Refusal = &analyze.Refusal{Code: analyze.BelowDetection,
-			Text:   fmt.Sprintf("no mains line of take %q stands out of the noise", s.Take.Name),
-			Advice: fmt.Sprintf("record %.3g s to halve the bound", 4*s.DurationS())}
-		own.Lines = nil
-	} else if floored {
-		if len(r.Budget) > 0 {
-			r = stage.Floor(r, f)
+	} else {
+		res = undetected(p, r, c, res)
+	}
+	refer(&res, s, own, g, referred)
+	below(&res, p.Params.RefLevel, s)
+	res.Points = singly(p, r, c, floor, weight, g, referred)
+	r.describe(p, c, &res)
+	if p.Has("baseline") {
+		if bad := compareBaseline(p, r, top, g, &res); bad != nil {
+			res.Notes = append(res.Notes, "no comparison with the baseline: "+bad.Text)
 		}
 	}
-	return refer(p, s, r, own)
+	beforeOrAfter(p, r, c, &res)
+	return res
+}
+
+// readable refuses a comb of which nothing can be read.
+func readable(r *reading, c comb) *analyze.Refusal {
+	switch {
+	case len(c.shares) > 0:
+		return nil
+	case len(c.lines) > 0:
+		return &analyze.Refusal{Code: analyze.AmbiguousTone, Text: fmt.Sprintf("order %d (%.5g Hz) lies under the test tone", c.lines[0].Order, c.lines[0].Hz),
+			Advice: "record without the tone"}
+	}
+	return &analyze.Refusal{Code: analyze.Bandwidth, Text: fmt.Sprintf("no order asked lies below half the rate of take %q", r.Sig.Take.Name),
+		Advice: "record at a higher rate"}
+}
+
+// rmsBudget is the budget of the root v of a power: noise (the wider side of
+// sqrt(P +- 2 u)), converter steps, calibration.
+func rmsBudget(r *reading, v float64, p stage.Power) budget.Budget {
+	var b budget.Budget
+	low, high := math.Sqrt(math.Max(p.P-2*p.U, 0)), math.Sqrt(p.P+2*p.U)
+	b.A("noise at the lines", math.Max(v-low, high-v)/2, 0)
+	b.B("converter steps", stage.StepU(r.Lines)/math.Sqrt2)
+	b.Scale(r.Sig, v)
+	return b
+}
+
+// undetected makes a result of a comb that does not stand out of the noise.
+func undetected(p *analyze.Pass, r *reading, c comb, res analyze.Result) analyze.Result {
+	res.Bound = &analyze.Bound{Upper: true, Value: r.bound(p, c)}
+	res.Refusal = belowDetection(r)
+	return res
+}
+
+func belowDetection(r *reading) *analyze.Refusal {
+	return &analyze.Refusal{Code: analyze.BelowDetection,
+		Text:   fmt.Sprintf("no mains line of take %q stands out of the noise", r.Sig.Take.Name),
+		Advice: fmt.Sprintf("record %.3g s or more to lower the bound", 4*r.Sig.DurationS())}
 }
 
 // refer puts the value, or its bound, at the unit's input.
-func refer(p *analyze.Pass, s *analyze.Signal, r analyze.Result, own budget.Budget) analyze.Result {
-	g, ok, bad := stage.InputGain(p)
-	if bad != nil {
-		return analyze.RefuseWith(r.Unit, bad)
+func refer(res *analyze.Result, s *analyze.Signal, own budget.Budget, g stage.Gain, referred bool) {
+	res.Details["referred_to"] = "recorder input"
+	if referred {
+		res.Details["referred_to"] = "unit input"
+		res.Details["gain_db"] = 20 * math.Log10(g.G)
+	} else {
+		res.Notes = append(res.Notes, "at the recorder's input, not referred to the unit's input")
 	}
+	switch {
+	case res.Bound != nil:
+		res.Bound.Value /= g.G
+		res.Details["upper_bound"] = res.Unit.FromLinear(res.Bound.Value)
+	case referred && res.Value != nil:
+		own.Lines = res.Budget
+		v, b := stage.Refer(*res.Value, own, s, g)
+		res.Value = &v
+		res.Budget, res.Lacking, res.Unstated = nil, nil, nil
+		b.Into(res)
+	}
+}
+
+// below says how far a value lies below the stated nominal level.
+func below(res *analyze.Result, ref *unit.Quantity, s *analyze.Signal) {
+	level, ok := nominal(ref, s)
 	if !ok {
-		r.Notes = append(r.Notes, "at the recorder's input, not referred to the unit's input")
-		bound(&r)
-		return r
+		return
 	}
-	r.Details["referred_to"] = "unit input"
-	r.Details["gain_db"] = 20 * math.Log10(g.G)
-	if r.Bound != nil {
-		r.Bound.Value /= g.G
-		bound(&r)
-		return r
-	}
-	own.Lines = r.Budget
-	v, b := stage.Refer(*r.Value, own, s, g)
-	r.Value = &v
-	r.Budget, r.Lacking, r.Unstated = nil, nil, nil
-	b.Into(&r)
-	return r
-}
-
-func bound(r *analyze.Result) {
-	if r.Bound != nil {
-		r.Details["upper_bound"] = r.Unit.FromLinear(r.Bound.Value)
+	switch {
+	case res.Value != nil && *res.Value > 0:
+		res.Details["below_ref_db"] = 20 * math.Log10(level / *res.Value)
+	case res.Bound != nil && res.Bound.Value > 0:
+		res.Details["below_ref_db_at_least"] = 20 * math.Log10(level/res.Bound.Value)
 	}
 }
 
-// list is details.harmonics.
-func list(l *stage.Lines, c comb) []map[string]any {
+// nominal is the stated level as RMS in the signal's unit.
+func nominal(ref *unit.Quantity, s *analyze.Signal) (float64, bool) {
+	if ref == nil {
+		return 0, false
+	}
+	v := ref.Linear()
+	switch {
+	case ref.Unit.Dim == unit.FullScale:
+		v *= s.FullScaleSine() / unit.FullScaleSine
+	case s.Unit == "FS":
+		return 0, false
+	}
+	return v, v > 0
+}
+
+// singly gives each harmonic as a point with the limit max_each of its own.
+func singly(p *analyze.Pass, r *reading, c comb, floor *reading, weight func(float64) float64, g stage.Gain, referred bool) []analyze.Point {
+	if p.Params.MaxEach == nil {
+		return nil
+	}
+	var out []analyze.Point
+	for _, q := range c.lines {
+		pt := analyze.Point{Label: fmt.Sprintf("order %d (%.4g Hz)", q.Order, float64(q.Order)*r.hz), Limit: p.Params.MaxEach}
+		k := 1.0
+		if weight != nil {
+			k = weight(q.Hz)
+		}
+		one := r.sum(q.Order, q.Order, weight, nil)
+		switch {
+		case q.Dropped:
+			pt.Refusal = &analyze.Refusal{Code: analyze.AmbiguousTone, Text: fmt.Sprintf("order %d lies under the test tone", q.Order), Advice: "record without the tone"}
+		case !stage.MainsDetected(r.Lines, q, len(c.lines)) || q.Power <= 0:
+			pt.Bound = &analyze.Bound{Upper: true, Value: r.bound(p, one) / g.G}
+			pt.Refusal = belowDetection(r)
+		default:
+			power := one.Power
+			if floor != nil {
+				if o, ok := floor.order(q.Order); ok && stage.MainsDetected(floor.Lines, o, len(c.lines)) {
+					power = stage.Power{P: power.P - k*o.Power, U: math.Hypot(power.U, k*o.U)}
+				}
+			}
+			if power.P < one.P/2 { // under 3 dB over the instrument's own
+				v := math.Sqrt(one.P)
+				pt.Bound = &analyze.Bound{Upper: true, Value: (v + one.U/v) / g.G}
+				pt.Refusal = &analyze.Refusal{Code: analyze.FloorLimited, Text: fmt.Sprintf("order %d is less than 3 dB over the instrument's own", q.Order),
+					Advice: "use a quieter recorder input, or more gain before it"}
+				break
+			}
+			v := math.Sqrt(power.P)
+			b := rmsBudget(r, v, power)
+			if referred {
+				v, b = stage.Refer(v, b, r.Sig, g)
+			}
+			pt.Value, pt.Budget = &v, b.Lines
+		}
+		out = append(out, pt)
+	}
+	return out
+}
+
+// list is details.harmonics: every order asked for, at the recorder's input
+// and, where a gain is known, at the unit's.
+func list(r *reading, c comb, g stage.Gain, referred bool, ref *unit.Quantity) []map[string]any {
+	level, hasLevel := nominal(ref, r.Sig)
 	var out []map[string]any
 	for _, q := range c.lines {
-		e := map[string]any{"order": q.Order, "frequency_hz": q.Hz}
+		e := map[string]any{"order": q.Order, "frequency_hz": float64(q.Order) * r.hz}
 		if q.Dropped {
 			e["rms_v"], e["uncertainty_v"], e["detected"], e["hidden"] = nil, nil, false, true
 			out = append(out, e)
 			continue
 		}
-		e["rms_v"] = q.RMS()
-		e["detected"] = stage.MainsDetected(l, q, len(c.lines))
-		if q.Power > q.U {
-			e["uncertainty_v"] = 2 * q.U / (2 * q.RMS())
-		} else {
-			e["uncertainty_v"] = math.Sqrt(math.Max(q.Power, 0)+2*q.U) - q.RMS()
+		rms := q.RMS()
+		e["rms_v"], e["uncertainty_v"] = rms, lineU(r.Lines, q)
+		seen := stage.MainsDetected(r.Lines, q, len(c.lines))
+		e["detected"] = seen
+		if !seen {
+			e["upper_bound_v"] = r.bound1(q)
 		}
-		if b, ok := stage.MainsBound(l, q.Power+q.Share, []float64{q.Share}); ok {
-			e["upper_bound_v"] = b
+		if seen && rms > 0 {
+			if r.Sig.Unit == "V" {
+				e["level_dbu"] = dBu.FromLinear(rms / g.G)
+			}
+			if hasLevel {
+				e["below_ref_db"] = 20 * math.Log10(level/(rms/g.G))
+			}
+		}
+		if referred {
+			e["input_rms_v"], e["input_uncertainty_v"] = rms/g.G, lineU(r.Lines, q)/g.G
+		}
+		if deg, steady, ok := r.against(q); ok && seen {
+			e["phase_deg"], e["steady"] = deg, steady
 		}
 		out = append(out, e)
 	}
 	return out
 }
 
-// combFigure shows the orders as bars beside the noise in a block's bandwidth.
-func combFigure(l *stage.Lines, c comb) analyze.Figure {
-	s := l.Sig
-	fig := analyze.Figure{
-		ID:      fmt.Sprintf("comb-%s-ch%d", s.Take.Name, s.Channel()),
-		Title:   fmt.Sprintf("Mains harmonics of take %s, channel %d", s.Take.Name, s.Channel()),
-		Caption: fmt.Sprintf("RMS of each order of %.4f Hz, noise share removed; the line is the RMS that noise alone may reach", l.MainsHz),
-		X:       analyze.Axis{Label: "order", Unit: ""},
-		Y:       analyze.Axis{Label: "RMS", Unit: s.Unit, Log: true},
+// bound1 is the bound of one order at the track's frequency.
+func (r *reading) bound1(q stage.Line) float64 {
+	if b, ok := stage.MainsBound(r.Lines, q.Power+q.Share, []float64{q.Share}); ok {
+		return b
 	}
-	bars := analyze.Series{Name: "harmonic", Kind: analyze.Bars}
-	floor := analyze.Series{Name: "detection threshold", Kind: analyze.Line}
+	return stage.MainsThreshold(r.Lines, q, 1)
+}
+
+// describe adds what the comb says of its origin, other lines, flags, figures.
+func (r *reading) describe(p *analyze.Pass, c comb, res *analyze.Result) {
+	f := r.family()
+	f.details(res.Details)
+	if words := f.opinion(r.Sig.Take.Name); words != "" {
+		res.Opinions = append(res.Opinions, words)
+	}
+	if list := r.otherLines(); len(list) > 0 {
+		res.Details["other_lines"] = list
+	}
 	for _, q := range c.lines {
-		if q.Dropped {
-			continue
-		}
-		t := stage.MainsThreshold(l, q, len(c.lines))
-		floor.X = append(floor.X, float64(q.Order))
-		floor.Y = append(floor.Y, t)
-		if stage.MainsDetected(l, q, len(c.lines)) && q.RMS() > 0 {
-			bars.X = append(bars.X, float64(q.Order))
-			bars.Y = append(bars.Y, q.RMS())
+		if q.Dropped && r.Tone != nil {
+			res.Flags = append(res.Flags, stage.ToneOnMainsFlag(r.Lines, q.Order))
 		}
 	}
-	fig.Series = []analyze.Series{bars, floor}
-	return fig
+	if f := unlike(p, r); f != nil {
+		res.Flags = append(res.Flags, *f)
+	}
+	res.Figures = append(res.Figures, combFigure(r, c), foldedFigure(r), frequencyFigure(r), stage.SpectrumFigure(p, r.Lines))
 }
 
 // unlike flags a comb whose frequency is not the job's supply.
-func unlike(p *analyze.Pass, l *stage.Lines) *recording.Flag {
-	if p.MainsHz <= 0 || l.MainsFound {
+func unlike(p *analyze.Pass, r *reading) *recording.Flag {
+	if p.MainsHz <= 0 || r.MainsFound {
 		return nil
 	}
-	other := stage.OtherSupply(p, l)
+	other := stage.OtherSupply(p, r.Lines)
 	if other == 0 {
 		return nil
 	}
-	return &recording.Flag{Code: recording.MainsUnlike, Take: l.Sig.Take.Name, Channel: l.Sig.Channel(),
-		Message: fmt.Sprintf("hum of %.4g Hz was found, none of the job's %.4g Hz", other, p.MainsHz)}
-}
-
-var humRatio = &analyze.Measure{
-	Name:  "hum_ratio",
-	Title: "hum against the remaining noise",
-	Doc: "Hum of the orders 1 to `harmonics` inside the band over the noise in the band without them. `weighting` acts on both. A test tone and its harmonics " +
-		"are left out of the noise.",
-	Formula:  "20 lg(U_hum / U_rest)",
-	Standard: "common practice",
-	Unit:     "dB",
-	Roles:    []string{"take"},
-	Keys:     []string{"band", "harmonics", "weighting", "gain", "gain_take", "gain_uncertainty"},
-	Run:      runRatio,
-}
-
-func runRatio(p *analyze.Pass) analyze.Result {
-	s, bad := p.Signal("take", "out")
-	if bad != nil {
-		return analyze.RefuseWith(dB, bad)
-	}
-	band, bad := stage.BandFor(s, p.Params.BandOr(20, 20000))
-	if bad == nil && band.Open {
-		bad = &analyze.Refusal{Code: analyze.TooShort,
-			Text:   fmt.Sprintf("take %q holds %.3g s; noise from %.4g Hz on needs %.3g s", s.Take.Name, s.DurationS(), band.Low, 10/band.Low),
-			Advice: fmt.Sprintf("record %.3g s or more", math.Max(10/band.Low, 10))}
-	}
-	if bad != nil {
-		return analyze.RefuseWith(dB, bad)
-	}
-	top := p.Params.Harmonics
-	if top == 0 {
-		top = 20
-	}
-	l, bad := lines(p, s, top)
-	if bad != nil {
-		return analyze.RefuseWith(dB, bad)
-	}
-	gain := stage.Weighting(p.Params.Weighting)
-	c := sum(l, 0, top, gain, func(q stage.Line) bool { return band.InLine(q.Hz) })
-	rest := stage.NoiseIn(l, band, gain).Plus(stage.LinesIn(band, gain, l.Others))
-	for _, q := range l.Mains {
-		if q.Order > top {
-			rest = rest.Plus(stage.LinesIn(band, gain, []stage.Line{q}))
-		}
-	}
-	if rest.P <= 0 {
-		return analyze.Refuse(dB, analyze.NoSignal, fmt.Sprintf("take %q, channel %d holds no noise", s.Take.Name, s.Channel()), "check the connection")
-	}
-	r := analyze.Result{Unit: dB}
-	r.Details = map[string]any{"mains_hz": l.MainsHz, "harmonics": list(l, c), "band_hz": []float64{band.Low, band.High},
-		"noise_v": math.Sqrt(rest.P), "hum_v": math.Sqrt(math.Max(c.P, 0)), "span_s": []float64{s.StartS, s.StartS + s.DurationS()}}
-	r.Figures = []analyze.Figure{combFigure(l, c), stage.SpectrumFigure(p, l)}
-	if !c.seen || c.P <= 0 {
-		b, ok := stage.MainsBound(l, c.read, c.shares)
-		if !ok {
-			b = budget.SumThreshold(c.shares, falseAlarm)
-		}
-		r.Bound = &analyze.Bound{Upper: true, Value: b / math.Sqrt(rest.P)}
-		r.Refusal = &analyze.Refusal{Code: analyze.BelowDetection, Text: fmt.Sprintf("no mains line of take %q stands out of the noise", s.Take.Name),
-			Advice: fmt.Sprintf("record %.3g s to halve the bound", 4*s.DurationS())}
-		bound(&r)
-		return r
-	}
-	v := math.Sqrt(c.P / rest.P)
-	var b budget.Budget
-	b.A("noise at the lines", v*c.U/(2*c.P), 0)
-	b.A("noise statistics", v*rest.U/(2*rest.P), 0)
-	b.Into(&r)
-	r.Value = &v
-	return r
-}
-
-var mainsFrequency = &analyze.Measure{
-	Name:     "mains_frequency",
-	Title:    "frequency of the mains",
-	Doc:      "Mean of the mains frequency over the span, from all orders that stand out of the noise, followed in blocks of about 1 s.",
-	Formula:  "common frequency of the comb, least squares",
-	Standard: "EN 50160 (what supplies may do)",
-	Unit:     "Hz",
-	Roles:    []string{"take"},
-	Run:      runMainsFrequency,
-}
-
-func runMainsFrequency(p *analyze.Pass) analyze.Result {
-	s, bad := p.Signal("take", "out")
-	if bad != nil {
-		return analyze.RefuseWith(hertz, bad)
-	}
-	l, bad := lines(p, s, 0)
-	if bad != nil {
-		return analyze.RefuseWith(hertz, bad)
-	}
-	if !l.MainsFound {
-		return analyze.Refuse(hertz, analyze.BelowDetection, fmt.Sprintf("no mains line of take %q stands out of the noise", s.Take.Name), "lay a wire beside a mains lead and record that on a second channel; never connect anything to the mains")
-	}
-	f := l.MainsHz
-	var b budget.Budget
-	b.A("noise at the lines", stage.MainsHzU(l), 0)
-	b.Clock(s, f)
-	r := analyze.Result{Value: &f, Unit: hertz}
-	b.Into(&r)
-	r.Details = map[string]any{"mains_hz": f, "wander_hz": l.MainsTrack.Spread * s.RateHz, "span_s": []float64{s.StartS, s.StartS + s.DurationS()}}
-	r.Figures = []analyze.Figure{stage.SpectrumFigure(p, l)}
-	return r
+	return &recording.Flag{Code: recording.MainsUnlike, Take: r.Sig.Take.Name, Channel: r.Sig.Channel(),
+		Message: fmt.Sprintf("hum of %.4g Hz was found, none of the job's %.4g Hz; state [mains] frequency as it is", other, p.MainsHz)}
 }
