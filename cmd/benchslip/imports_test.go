@@ -56,7 +56,7 @@ var owners = map[string][]string{
 	"gonum.org/v1/plot":              {"report/figure", "report/pdf"},
 	"codeberg.org/go-pdf/fpdf":       {"report/pdf"},
 	"codeberg.org/go-fonts/":         {"report/figure", "report/pdf"},
-	"golang.org/x/image":             {"report/figure"},
+	"golang.org/x/image":             {"report/figure", "report/pdf"},
 	"github.com/spf13/":              {"cmd"},
 	"golang.org/x/term":              {"cmd"},
 }
