@@ -132,10 +132,6 @@ func measure(p *analyze.Pass, d, c *analyze.Take, hz float64) point {
 	size := gc.G * math.Sqrt(math.Max(f.Whole, f.Share*0.1)/(f.Whole+f.Share))
 	pt.value = gd.G / size
 	pt.lines = budget.Difference(gd.Budget.Lines, gc.Budget.Lines, pt.value/gd.G, pt.value/gc.G)
-	if s := separation(hc.Out, hc.In); s > 0 {
-		// A vector of unknown phase: its part along G_c is arcsine-distributed.
-		pt.lines = append(pt.lines, analyze.Contributor{Name: "channel separation of the recorder", Kind: "B", U: budget.ArcSine(s/size) * pt.value})
-	}
 	g := stage.Gain{Budget: gc.Budget, Cancels: true}
 	pt.lacking = stage.Lacking(gd.Budget.Lacking, g)
 	return pt

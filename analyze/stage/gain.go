@@ -36,6 +36,7 @@ func GainOfHeard(p *analyze.Pass, t *analyze.Take, h *Heard, s Stimulus) (Gain, 
 		AddTone(b, h.Lo, "out", g.G)
 		AddTone(b, s.Lines, "in", g.G)
 		b.Ratio(h.Out, s.Lines.Sig, g.G)
+		Separation(b, h.Lo, s.Lines, g.G)
 		return g, nil
 	}
 	g.G = cmplx.Abs(z) / math.Sqrt2 / s.Level
@@ -44,6 +45,20 @@ func GainOfHeard(p *analyze.Pass, t *analyze.Take, h *Heard, s Stimulus) (Gain, 
 	b.Scale(h.Out, g.G)
 	b.InLevel(t, p.Wiring(t), g.G)
 	return g, nil
+}
+
+// Separation adds what two channels of one recorder leak into each other, by
+// the gear's stated separation: a vector of unknown phase in each, the other
+// channel's tone times 10^(-separation/20), whose part along the reading is
+// arcsine-distributed. value is the sensitivity to a relative error.
+func Separation(b *budget.Budget, over, under *Lines, value float64) {
+	if over.Sig.Take != under.Sig.Take || over.Sig.Gear.Separation == 0 {
+		return
+	}
+	leak := budget.ArcSine(math.Pow(10, -over.Sig.Gear.Separation/20))
+	ratio := cmplx.Abs(over.Phasor()) / cmplx.Abs(under.Phasor())
+	b.B("channel separation, into out", leak/ratio*value)
+	b.B("channel separation, into in", leak*ratio*value)
 }
 
 // InputGain is the gain that refers a voltage to the unit's input: `gain`

@@ -147,6 +147,7 @@ func runPhase(p *analyze.Pass) analyze.Result {
 	stage.AddTone(&b, h.Lo, "out", perRad)
 	stage.AddTone(&b, h.Li, "in", perRad)
 	b.Skew(h.Out, h.In, 360*h.Tone.Hz)
+	stage.Separation(&b, h.Lo, h.Li, perRad)
 	r := analyze.Result{Value: &deg, Unit: degree}
 	finish(&r, &b, p, h)
 	return r
