@@ -17,7 +17,7 @@ import (
 // fewer. No flag may be raised, and the rate must lie within one unit of the
 // last digit over the span.
 func TestEvenTimeIsClean(t *testing.T) {
-	for seed := range uint64(600) {
+	for seed := range uint64(200) {
 		r := rand.New(rand.NewPCG(seed, 4))
 		n := 50 + r.IntN(3000)
 		step := math.Pow(10, -1-6*r.Float64())
@@ -70,7 +70,7 @@ func TestEvenTimeIsClean(t *testing.T) {
 // TestOddTimeIsFlagged damages even time bases: rows lost or doubled, jitter
 // beyond the rounding, a slow drift. Each must raise its flag.
 func TestOddTimeIsFlagged(t *testing.T) {
-	for seed := range uint64(300) {
+	for seed := range uint64(150) {
 		r := rand.New(rand.NewPCG(seed, 5))
 		n := 60 + r.IntN(2000)
 		step := []float64{1e-3, 4e-6, 2.5e-5, 0.1, 0.63e-6}[r.IntN(5)]
