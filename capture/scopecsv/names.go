@@ -352,10 +352,6 @@ func (f *file) misfit(lay *layout, r row, numeric []bool) error {
 	return nil
 }
 
-// timeWords are names of a time column in the languages met, in lower case.
-var timeWords = map[string]bool{"time": true, "t": true, "times": true, "zeit": true, "temps": true, "tiempo": true, "tempo": true, "tid": true, "tijd": true, "aika": true, "czas": true, "\u0432\u0440\u0435\u043c\u044f": true,
-	"\u65f6\u95f4": true, "\u6642\u9593": true, "\u6642\u523b": true, "\uc2dc\uac04": true, "zeitachse": true, "timestamp": true, "time stamp": true, "timebase": true, "elapsed": true, "elapsed time": true, "seconds": true, "second": true, "sec": true, "secs": true, "rel time": true, "relative time": true, "reltime": true, "abs time": true, "date time": true, "datetime": true, "date/time": true, "date": true, "clock": true, "s": true, "ms": true, "us": true, "ns": true, "milliseconds": true, "microseconds": true, "millis": true, "micros": true, "cas": true, "\u010das": true, "zaman": true, "vrijeme": true, "sample time": true, "horizontal": true, "in s": true, "uhrzeit": true, "heure": true, "hora": true, "ora": true}
-
 // timeWord says whether a header names time.
 func timeWord(t string) bool {
 	h := readHeader(t)
@@ -370,9 +366,6 @@ func timeWord(t string) bool {
 	}
 	return h.q == seconds
 }
-
-// indexWords are names of a column that counts rows, in lower case.
-var indexWords = map[string]bool{"x": true, "index": true, "idx": true, "i": true, "n": true, "no": true, "no.": true, "nr": true, "nr.": true, "#": true, "sample": true, "samples": true, "sample no": true, "sample no.": true, "sample number": true, "sample #": true, "sample index": true, "point": true, "points": true, "number": true, "num": true, "row": true, "rows": true, "sequence": true, "seq": true, "record": true, "record no": true, "record no.": true, "scan": true, "scan no": true, "reading": true, "reading no": true, "counter": true, "id": true, "item": true, "\u5e8f\u53f7": true, "s/n": true, "entry": true, "pos": true, "position": true, "line": true, "sample_index": true, "sample_no": true, "pts": true, "data point": true, "": false}
 
 func indexWord(t string) bool {
 	w := strings.ToLower(strings.Trim(t, " \t\"'"))

@@ -18,10 +18,6 @@ const (
 	indexRole
 )
 
-// extraWords name columns that are no channel even when they hold numbers.
-var extraWords = map[string]bool{"event": true, "events": true, "marker": true, "markers": true, "comment": true, "comments": true, "signature": true, "alarm": true, "alarms": true, "alarm text": true,
-	"status": true, "flag": true, "flags": true, "checksum": true, "crc": true, "annotation": true, "annotations": true, "note": true, "notes": true, "remark": true, "remarks": true, "date": true, "valid": true, "trigger event": true, "error": true, "errors": true, "state": true}
-
 // assignColumns decides which column is time and which are channels.
 func (a *assembly) assignColumns(numeric []bool) error {
 	w := a.lay.width

@@ -42,8 +42,10 @@ func codeStep(v []float64, q float64, digits int) float64 {
 	for part := 1; part <= 4; part++ { // the least difference may be 2..4 steps
 		g := fitStep(u, least/float64(part))
 		// Values that have nothing to do with steps of g fall onto their grid
-		// with this chance: too likely means that nothing is shown.
-		if chance := math.Pow(2*tolerance(g, q)/g, float64(len(u)-2)); g < 1.9*q || chance > 1e-9 {
+		// with this chance: too likely shows nothing, unless values repeat so
+		// often that they are steps for sure.
+		chance := math.Pow(2*tolerance(g, q)/g, float64(len(u)-2))
+		if g < 1.9*q || chance > 1e-9 && len(u)*4 > len(s) {
 			continue
 		}
 		if onGrid(v, u[0], g, q) {

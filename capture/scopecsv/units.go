@@ -46,27 +46,44 @@ var exactUnits = map[string]unitWord{
 }
 
 // plainUnits are words, compared without case.
-var plainUnits = map[string]unitWord{
-	"volt": {volts, 1}, "volts": {volts, 1}, "millivolt": {volts, 1e-3}, "millivolts": {volts, 1e-3}, "microvolt": {volts, 1e-6}, "microvolts": {volts, 1e-6},
-	"mvolt": {volts, 1e-3}, "mvolts": {volts, 1e-3}, "uvolt": {volts, 1e-6}, "uvolts": {volts, 1e-6}, "kilovolt": {volts, 1e3}, "kilovolts": {volts, 1e3},
-	"dcv": {volts, 1}, "dc v": {volts, 1}, "dcmv": {volts, 1e-3}, "dc mv": {volts, 1e-3}, "mv dc": {volts, 1e-3}, "vdc": {volts, 1}, "v dc": {volts, 1}, "vac": {volts, 1}, "mvdc": {volts, 1e-3},
-	"sec": {seconds, 1}, "secs": {seconds, 1}, "second": {seconds, 1}, "seconds": {seconds, 1}, "sekunde": {seconds, 1}, "sekunden": {seconds, 1}, "secondes": {seconds, 1},
-	"segundos": {seconds, 1}, "secondi": {seconds, 1}, "millisecond": {seconds, 1e-3}, "milliseconds": {seconds, 1e-3}, "msec": {seconds, 1e-3}, "msecs": {seconds, 1e-3}, "millis": {seconds, 1e-3},
-	"microsecond": {seconds, 1e-6}, "microseconds": {seconds, 1e-6}, "usec": {seconds, 1e-6}, "usecs": {seconds, 1e-6}, "micros": {seconds, 1e-6},
-	"nanosecond": {seconds, 1e-9}, "nanoseconds": {seconds, 1e-9}, "nsec": {seconds, 1e-9}, "nanos": {seconds, 1e-9}, "picoseconds": {seconds, 1e-12},
-	"minute": {seconds, 60}, "minutes": {seconds, 60}, "hour": {seconds, 3600}, "hours": {seconds, 3600}, "hrs": {seconds, 3600}, "min": {seconds, 60}, "h": {seconds, 3600}, "hr": {seconds, 3600},
-	"hertz": {hertz, 1}, "hz": {hertz, 1}, "khz": {hertz, 1e3}, "ghz": {hertz, 1e9},
-	"count": {counts, 1}, "counts": {counts, 1}, "code": {counts, 1}, "codes": {counts, 1}, "lsb": {counts, 1}, "lsbs": {counts, 1}, "adc": {counts, 1}, "raw": {counts, 1}, "adu": {counts, 1},
-	"bits": {counts, 1}, "adc counts": {counts, 1}, "dn": {counts, 1}, "digits": {counts, 1}, "int": {counts, 1}, "int16": {counts, 1}, "uint8": {counts, 1}, "cts": {counts, 1}, "steps": {counts, 1},
-	"a": {other, 1}, "ma": {other, 1}, "ua": {other, 1}, "na": {other, 1}, "ka": {other, 1}, "pa": {other, 1}, "amp": {other, 1}, "amps": {other, 1}, "ampere": {other, 1}, "amperes": {other, 1}, "arms": {other, 1}, "vrms": {other, 1}, "vpp": {other, 1},
-	"w": {other, 1}, "mw": {other, 1}, "kw": {other, 1}, "uw": {other, 1}, "watt": {other, 1}, "watts": {other, 1}, "va": {other, 1}, "wh": {other, 1}, "j": {other, 1}, "ah": {other, 1}, "mah": {other, 1},
-	"ohm": {other, 1}, "ohms": {other, 1}, "kohm": {other, 1}, "mohm": {other, 1}, "\u2126": {other, 1}, "\u03c9": {other, 1}, "k\u2126": {other, 1}, "k\u03c9": {other, 1}, "m\u2126": {other, 1}, "m\u03c9": {other, 1},
-	"degc": {other, 1}, "deg c": {other, 1}, "\u00b0c": {other, 1}, "\u2103": {other, 1}, "c": {other, 1}, "k": {other, 1}, "f": {other, 1}, "\u00b0f": {other, 1}, "celsius": {other, 1}, "kelvin": {other, 1}, "degf": {other, 1},
-	"%": {other, 1}, "%rh": {other, 1}, "rh": {other, 1}, "ppm": {other, 1}, "db": {other, 1}, "dbm": {other, 1}, "dbv": {other, 1}, "dbu": {other, 1}, "dbuv": {other, 1}, "dbfs": {other, 1}, "dbmv": {other, 1},
-	"deg": {other, 1}, "\u00b0": {other, 1}, "rad": {other, 1}, "degree": {other, 1}, "degrees": {other, 1}, "rpm": {other, 1}, "n": {other, 1}, "kn": {other, 1}, "nm": {other, 1}, "mpa": {other, 1}, "kpa": {other, 1}, "hpa": {other, 1}, "bar": {other, 1}, "mbar": {other, 1}, "psi": {other, 1},
-	"g": {other, 1}, "kg": {other, 1}, "m/s2": {other, 1}, "m/s^2": {other, 1}, "m/s\u00b2": {other, 1}, "m/s": {other, 1}, "m": {other, 1}, "mm": {other, 1}, "um": {other, 1}, "cm": {other, 1}, "t": {other, 1}, "mt": {other, 1}, "ut": {other, 1}, "gauss": {other, 1}, "lux": {other, 1}, "lx": {other, 1}, "lm": {other, 1}, "cd": {other, 1},
-	"l/min": {other, 1}, "m3/h": {other, 1}, "vv": {other, 1}, "v^2": {other, 1}, "v\u00b2": {other, 1}, "v*v": {other, 1}, "v/s": {other, 1}, "vs": {other, 1}, "v*s": {other, 1}, "v/a": {other, 1}, "aa": {other, 1}, "a*a": {other, 1}, "v2": {other, 1}, "va*s": {other, 1}, "sa": {other, 1}, "s/s": {other, 1}, "c/s": {other, 1}, "arb": {other, 1}, "a.u.": {other, 1}, "au": {other, 1}, "a.u": {other, 1}, "uf": {other, 1}, "nf": {other, 1}, "pf": {other, 1}, "uh": {other, 1}, "mh": {other, 1}, "siemens": {other, 1},
-	"v/v": {other, 1}, "mv/v": {other, 1}, "v/hz": {other, 1}, "v/m": {other, 1}, "fs": {other, 1}, "strain": {other, 1}, "ustrain": {other, 1},
+var plainUnits = unitWords([]unitNames{
+	{volts, 1, "volt|volts|dcv|dc v|vdc|v dc|vac"},
+	{volts, 1e-3, "millivolt|millivolts|mvolt|mvolts|dcmv|dc mv|mv dc|mvdc"},
+	{volts, 1e-6, "microvolt|microvolts|uvolt|uvolts"},
+	{volts, 1e3, "kilovolt|kilovolts"},
+	{seconds, 1, "sec|secs|second|seconds|sekunde|sekunden|secondes|segundos|secondi"},
+	{seconds, 1e-3, "millisecond|milliseconds|msec|msecs|millis"},
+	{seconds, 1e-6, "microsecond|microseconds|usec|usecs|micros"},
+	{seconds, 1e-9, "nanosecond|nanoseconds|nsec|nanos"},
+	{seconds, 1e-12, "picoseconds"},
+	{seconds, 60, "minute|minutes|min"},
+	{seconds, 3600, "hour|hours|hrs|h|hr"},
+	{hertz, 1, "hertz|hz"},
+	{hertz, 1e3, "khz"},
+	{hertz, 1e9, "ghz"},
+	{counts, 1, "count|counts|code|codes|lsb|lsbs|adc|raw|adu|bits|adc counts|dn|digits|int|int16|uint8|cts|steps"},
+	{other, 1, "a|ma|ua|na|ka|pa|amp|amps|ampere|amperes|arms|vrms|vpp|w|mw|kw|uw|watt|watts|va|wh|j|ah|mah|ohm|" +
+		"ohms|kohm|mohm|\u2126|\u03c9|k\u2126|k\u03c9|m\u2126|m\u03c9|degc|deg c|\u00b0c|\u2103|c|k|f|" +
+		"\u00b0f|celsius|kelvin|degf|%|%rh|rh|ppm|db|dbm|dbv|dbu|dbuv|dbfs|dbmv|deg|\u00b0|rad|degree|" +
+		"degrees|rpm|n|kn|nm|mpa|kpa|hpa|bar|mbar|psi|g|kg|m/s2|m/s^2|m/s\u00b2|m/s|m|mm|um|cm|t|mt|ut|gauss|" +
+		"lux|lx|lm|cd|l/min|m3/h|vv|v^2|v\u00b2|v*v|v/s|vs|v*s|v/a|aa|a*a|v2|va*s|sa|s/s|c/s|arb|a.u.|au|a.u|" +
+		"uf|nf|pf|uh|mh|siemens|v/v|mv/v|v/hz|v/m|fs|strain|ustrain"},
+})
+
+type unitNames struct {
+	q      quantity
+	factor float64
+	names  string // parted by bars
+}
+
+func unitWords(list []unitNames) map[string]unitWord {
+	m := map[string]unitWord{}
+	for _, u := range list {
+		for _, n := range strings.Split(u.names, "|") {
+			m[n] = unitWord{u.q, u.factor}
+		}
+	}
+	return m
 }
 
 // gluedUnit reads a unit behind a number in one cell: "514.1mV", "-5 us".
