@@ -53,7 +53,8 @@ type Take struct {
 	Where    []Condition
 	Note     string
 	Setup    string
-	Stimulus string
+	Stimulus string // a WAV file as typed, or the description of a stimulus
+	Played   string // where that file lies; "" for a description
 	CSV      recording.Options
 
 	// Set when the file was opened.
@@ -62,6 +63,9 @@ type Take struct {
 	SHA256 string
 	Flags  []recording.Flag // all flags of the file, named with the take
 	Fault  *Refusal         // missing-take, unreadable, unsupported; Rec is nil then
+
+	PlayedRec   recording.Recording // the file that was played; nil for a description
+	PlayedFault *Refusal            // why that file cannot be read
 }
 
 // Condition returns the value of a key of the take's `where`.

@@ -47,11 +47,39 @@ func Open(ctx context.Context, t *analyze.Take) error {
 		return nil
 	}
 	t.Rec, t.SHA256 = rec, sum
+	openPlayed(t)
 	for _, f := range append(append([]capture.Flag{}, rec.Info().Flags...), t.Health.Flags...) {
 		f.Take = t.Name
 		t.Flags = append(t.Flags, f)
 	}
 	return nil
+}
+
+// openPlayed opens the file that a take was played from, when the job names
+// one. Its fault belongs to the measures that need it.
+func openPlayed(t *analyze.Take) {
+	if t.Played == "" {
+		return
+	}
+	rec, err := capture.Open(t.Played, capture.Options{})
+	if err != nil {
+		as := *t // words for the stimulus' file, not the take's
+		as.File = t.Stimulus
+		t.PlayedFault = fault(&as, err)
+		t.PlayedFault.Advice = "correct `stimulus`, or write the file with the stimulus command"
+		return
+	}
+	t.PlayedRec = rec
+}
+
+// Close closes what Open opened.
+func Close(t *analyze.Take) {
+	if t.Rec != nil {
+		t.Rec.Close()
+	}
+	if t.PlayedRec != nil {
+		t.PlayedRec.Close()
+	}
 }
 
 // fault words why a file gives no samples.

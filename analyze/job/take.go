@@ -47,7 +47,7 @@ func (r *reader) readTake(name string, n *node) {
 	}
 	t.Note = r.textOf(get("note"), k("note"), false)
 	t.Setup = r.word(get("setup"), k("setup"))
-	t.Stimulus = r.stimulus(get("stimulus"), k("stimulus"))
+	t.Stimulus, t.Played = r.stimulus(get("stimulus"), k("stimulus"))
 	t.Where = r.conditions(get("where"))
 	t.CSV = r.csv(n, name)
 	t.Wiring = r.wiring(get)
@@ -99,26 +99,28 @@ func (r *reader) gearRef(n *node, name string) *analyze.Gear {
 	return nil
 }
 
-// stimulus is a WAV file inside the job's folder or the description of one
-// that can be made.
-func (r *reader) stimulus(n *node, k keys.Key) string {
+// stimulus is a WAV file inside the job's folder, with the path to it, or the
+// description of one that can be made.
+func (r *reader) stimulus(n *node, k keys.Key) (text, path string) {
 	s := r.textOf(n, k, false)
 	if s == "" {
-		return ""
+		return "", ""
 	}
 	if !strings.HasSuffix(strings.ToLower(s), ".wav") {
 		if _, err := stimulus.Parse(s); err != nil {
 			r.add(n.at, "%s: %s", tick(k.Name), clean200(strings.TrimPrefix(err.Error(), "stimulus: ")))
 		}
-		return s
+		return s, ""
 	}
-	if !r.anyPath {
-		if _, why := confine(r.job.Dir, s, r.opt.AllowOutside); why != "" {
-			r.add(n.at, "%s: %s %s", tick(k.Name), quote(s), why)
-			return ""
-		}
+	if r.anyPath {
+		return s, s
 	}
-	return s
+	path, why := confine(r.job.Dir, s, r.opt.AllowOutside)
+	if why != "" {
+		r.add(n.at, "%s: %s %s", tick(k.Name), quote(s), why)
+		return "", ""
+	}
+	return s, path
 }
 
 // csv reads [takes.NAME.csv], each key over that of [defaults.csv].

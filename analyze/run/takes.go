@@ -32,9 +32,7 @@ func openTakes(ctx context.Context, takes []*analyze.Take, date string, opt Opti
 
 func closeTakes(takes []*analyze.Take) {
 	for _, t := range takes {
-		if t.Rec != nil {
-			t.Rec.Close()
-		}
+		intake.Close(t)
 	}
 }
 
