@@ -140,7 +140,7 @@ func table(key string, v reflect.Value) Table {
 // endings of keys and their units.
 var endings = []struct{ ending, symbol string }{
 	{"_v_per_rthz", "V/rtHz"}, {"_v_per_m", "V/m"}, {"_v_per_s", "V/s"}, {"_percent", "%"}, {"_dbfs", "dBFS"}, {"_dbu", "dBu"},
-	{"_dbv", "dBV"}, {"_ohm", "ohm"}, {"_ppm", "ppm"}, {"_deg", "deg"}, {"_db", "dB"}, {"_hz", "Hz"}, {"_v", "V"}, {"_s", "s"},
+	{"_dbv", "dBV"}, {"_ohm", "ohm"}, {"_ppm", "ppm"}, {"_deg", "deg"}, {"_db", "dB"}, {"_hz", "Hz"}, {"_v", "V"}, {"_fs", "FS"}, {"_s", "s"},
 }
 
 func splitKey(key string) (words, symbol string) {

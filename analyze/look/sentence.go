@@ -47,7 +47,7 @@ func sentence(t *analyze.Take, c int, seen *stage.Survey) string {
 // the AC power.
 func strongest(ac float64, u string, seen *stage.Survey) string {
 	if seen == nil {
-		return level(ac, u) + " RMS without its mean"
+		return level(ac, u) + " RMS about the mean"
 	}
 	if len(seen.Peaks) == 0 {
 		return "no line stands out, " + level(ac, u) + " in all"

@@ -340,4 +340,40 @@ func (r *runner) complete(c *slip.Check, row job.Row) {
 	if from, to, ok := stretch(row); ok && len(row.Main) < 2 {
 		add("span_s", []float64{from, to})
 	}
+	if t := first(row); t != nil && t.Rec != nil && !inVolts(t, p) {
+		c.Details = inFS(c.Details).(map[string]any)
+	}
+}
+
+// inVolts reports whether the signal that a row reads first is in volts.
+func inVolts(t *analyze.Take, p *analyze.Params) bool {
+	in := t.Rec.Info()
+	plus, minus, err := analyze.ResolveChannel(orOne(t.Wiring.Over(p.Wiring).Out), in)
+	if err != nil {
+		return true
+	}
+	return analyze.NewSignal(t, plus, minus, 0, in.Frames, 1).Unit == "V"
+}
+
+// inFS names what it is: measures call voltages rms_v and the like, and on a
+// take that nobody put into volts those are fractions of full scale, rms_fs.
+func inFS(v any) any {
+	switch x := v.(type) {
+	case map[string]any:
+		out := make(map[string]any, len(x))
+		for k, e := range x {
+			if base, ok := strings.CutSuffix(k, "_v"); ok && base != "" {
+				k = base + "_fs"
+			}
+			out[k] = inFS(e)
+		}
+		return out
+	case []map[string]any:
+		out := make([]map[string]any, len(x))
+		for i, e := range x {
+			out[i] = inFS(e).(map[string]any)
+		}
+		return out
+	}
+	return v
 }

@@ -6,6 +6,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"io/fs"
 	"os"
 	"runtime/debug"
 	"slices"
@@ -86,6 +87,10 @@ func (a *app) fault(err error) {
 	a.status = exitFault
 	if errors.Is(err, context.Canceled) {
 		err = errors.New("interrupted, nothing was written")
+	}
+	var pe *fs.PathError
+	if errors.As(err, &pe) && pe == err { // without the name of the system call
+		err = fmt.Errorf("%s: %w", pe.Path, pe.Err)
 	}
 	a.message("benchslip: %v", err)
 }

@@ -121,16 +121,13 @@ func (c *csvOptions) options(cmd *cobra.Command) (capture.Options, error) {
 func (a *app) printLook(f *look.File) {
 	out := &a.out
 	fmt.Fprintf(out, "%s\n", f.File)
-	channels := fmt.Sprintf("%d channels", *f.Channels)
-	if *f.Channels == 1 {
-		channels = "1 channel"
-	}
+	channels := count(int64(*f.Channels), "channel")
 	rate := "rate unknown"
 	if f.RateHz != nil {
 		rate = rateText(*f.RateHz)
 	}
 	fmt.Fprintf(out, "  format   %s, %s, %s\n", *f.Format, channels, rate)
-	length := fmt.Sprintf("%d frames, %d bytes", *f.Frames, *f.Bytes)
+	length := fmt.Sprintf("%s, %d bytes", count(*f.Frames, "frame"), *f.Bytes)
 	if f.DurationS != nil {
 		length = fmt.Sprintf("%.7g s, %s", *f.DurationS, length)
 	}
@@ -151,6 +148,13 @@ func (a *app) printLook(f *look.File) {
 			fmt.Fprintf(out, "  %s: %s\n", channelName(l), l.Text)
 		}
 	}
+}
+
+func count(n int64, what string) string {
+	if n == 1 {
+		return "1 " + what
+	}
+	return fmt.Sprintf("%d %ss", n, what)
 }
 
 // rateText prints a sample rate with all its digits: "44.1 kHz".

@@ -185,7 +185,11 @@ func (a *app) measure(cmd *cobra.Command, m *analyze.Measure, args []string, opt
 			return err
 		}
 		for _, e := range list {
-			a.fault(usagef("measure %s: %v", m.Name, e))
+			text := e.Error()
+			if !strings.HasPrefix(text, "measure ") {
+				text = "measure " + m.Name + ": " + text
+			}
+			a.fault(errors.New(text))
 		}
 		return nil
 	}
@@ -263,7 +267,17 @@ func (a *app) printRow(r report.Row) {
 	line("for", report.Clean(strings.Join(c.Conditions, ", ")))
 	line("largest", r.TwoLargest())
 	if len(c.Unstated) > 0 {
-		line("left out", "the uncertainties of "+report.Clean(strings.Join(c.Unstated, ", "))+", which are not stated")
+		line("left out", report.Clean(strings.Join(c.Unstated, ", "))+" (not stated)")
+	}
+	pairs, tables := report.Details(c)
+	var details []string
+	for _, p := range pairs {
+		details = append(details, p.Key+" "+p.Value)
+	}
+	line("details", strings.Join(details, ", "))
+	for _, t := range tables {
+		rows := append([][]string{t.Columns}, t.Rows...)
+		fmt.Fprintf(out, "  %s\n%s", t.Name, columns(rows, "    "))
 	}
 	for _, f := range c.Flags {
 		line("flag", flagText(f))

@@ -6,6 +6,7 @@ import (
 	"math"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 	"testing"
 )
@@ -154,6 +155,7 @@ func TestMeasureUncalibrated(t *testing.T) {
 		{[]string{"level", wav, "--band", "20 Hz .. 7 kHz"}, 0, "dBFS", true},
 		{[]string{"peak", wav}, 0, "FS", true},
 		{[]string{"noise_density", wav, "--at", "1 kHz"}, 0, "FS/rtHz", true},
+		{[]string{"thd", filepath.Join(bench, "tone.wav"), "--band", "20 Hz .. 8 kHz"}, 0, "%", true},
 		{[]string{"hum", wav, "--max", "1 V"}, 3, "V", false},
 		{[]string{"hum", wav, "--max", "0 dBFS"}, 0, "dBFS", true},
 		{[]string{"hum", wav, "--max", "-90 dBFS"}, 1, "dBFS", true},
@@ -171,8 +173,11 @@ func TestMeasureUncalibrated(t *testing.T) {
 		for _, f := range row.Flags {
 			flagged = flagged || f.Code == "uncalibrated"
 		}
-		if c.value && len(c.args) < 5 && !strings.Contains(strings.Join(c.args, " "), "--max") && !flagged {
+		if c.value && strings.HasSuffix(c.unit, "FS") && !slices.Contains(c.args, "--max") && !flagged {
 			t.Errorf("%q: not flagged", c.args)
+		}
+		if strings.Contains(stdout, "_v\"") {
+			t.Errorf("%q: fractions of full scale are called volts", c.args)
 		}
 		if c.status == 3 && !strings.HasPrefix(row.Reason, "uncalibrated") {
 			t.Errorf("%q: reason %q", c.args, row.Reason)
