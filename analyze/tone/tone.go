@@ -28,7 +28,7 @@ var (
 
 // Measures lists the measures of this package.
 func Measures() []*analyze.Measure {
-	return []*analyze.Measure{gain, phase, polarity, frequency, thd, harmonic, thdn, sinad}
+	return []*analyze.Measure{gain, phase, polarity, frequency, thd, harmonic, thdn, sinad, modulation, differenceFrequency}
 }
 
 // details of the fundamental in out.

@@ -290,3 +290,35 @@ func rts(nu, u2 []float64, q float64) (smooth, variance []float64, like float64)
 	}
 	return x, p, like
 }
+
+// Sum is the track of the line at a*t + b*u that a nonlinearity makes of two
+// lines of one record: its phase is a times that of t and b times that of u.
+// Knots are those of t and of u; both come from the same blocks, or one of
+// them is rigid.
+func Sum(a float64, t *Track, b float64, u *Track) *Track {
+	s := &Track{Len: t.Len, Nu: a*t.Nu + b*u.Nu, UNu: math.Hypot(a*t.UNu, b*u.UNu), Rigid: t.Rigid && u.Rigid,
+		Spread: math.Hypot(a*t.Spread, b*u.Spread)}
+	if s.Rigid {
+		return s
+	}
+	s.At = t.At
+	if t.Rigid {
+		s.At = u.At
+	}
+	for _, i := range s.At {
+		dev, slope := 0.0, 0.0
+		for _, part := range []struct {
+			k float64
+			t *Track
+		}{{a, t}, {b, u}} {
+			if !part.t.Rigid {
+				d, m := part.t.deviation(i)
+				dev += part.k * d
+				slope += part.k * m
+			}
+		}
+		s.Dev = append(s.Dev, dev)
+		s.Slope = append(s.Slope, slope)
+	}
+	return s
+}
