@@ -87,7 +87,7 @@ func (s *scanner) row(p int) (end, lines int, err error) {
 	s.wide = false
 	s.odds = s.odds[:0]
 	for {
-		for p < len(b) && (b[p] == ' ' || b[p] == '\t' && sep != '\t') {
+		for p < len(b) && (b[p] == ' ' || b[p] == 0 || b[p] == '\t' && sep != '\t') {
 			p++
 		}
 		if sep == ' ' && (p == len(b) || b[p] == '\n' || b[p] == '\r') {
