@@ -9,7 +9,7 @@ import (
 
 func main() {
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt)
+	context.AfterFunc(ctx, stop) // a second interrupt ends the program at once
 	status := Run(ctx, os.Args[1:], os.Stdin, os.Stdout, os.Stderr)
-	stop()
 	os.Exit(status)
 }
