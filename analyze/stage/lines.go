@@ -33,6 +33,9 @@ type Line struct {
 	// Parts holds, for strong mains lines, the peak phasors of the blocks'
 	// parts, equally many a block, turned back by the track; nil for others.
 	Parts []complex128
+	// weak: the order does not show in the survey; a slower copy of the signal
+	// serves to read it (see slow.go).
+	weak bool
 	// Dropped: the line coincides with one of the tone and was not fitted.
 	Dropped bool
 	track   *sinefit.Track
@@ -194,6 +197,12 @@ func (l *Lines) layout(f *followed, tone *sinefit.Track, o Options) {
 			l.Mains = append(l.Mains, m)
 		}
 	}
+	if l.slowPays() {
+		for i := range l.Mains {
+			q := &l.Mains[i]
+			q.weak = !slices.Contains(f.Comb.Orders, q.Order) && !slices.Contains(f.Comb.Faint, q.Order)
+		}
+	}
 	for _, t := range f.Others {
 		hz := t.Nu * rate
 		if near(hz) {
@@ -217,9 +226,17 @@ func (l *Lines) all() []*Line {
 	return out
 }
 
-// fitBlocks solves every block and turns the phasors back by their tracks.
+// fitBlocks solves every block and turns the phasors back by their tracks;
+// weak lines are left for later.
 func (l *Lines) fitBlocks() {
-	lines := l.all()
+	var lines []*Line
+	for _, q := range l.all() {
+		if q.weak {
+			q.Blocks = make([]complex128, len(l.Blocks))
+			continue
+		}
+		lines = append(lines, q)
+	}
 	nu := make([]float64, len(lines))
 	var buf []float64
 	dc, samples := 0.0, 0.0
@@ -260,14 +277,19 @@ func (l *Lines) fitBlocks() {
 		l.DC = dc / samples
 	}
 	for _, q := range lines {
-		sum, weight := complex(0, 0), 0.0
-		for m, b := range l.Blocks {
-			n := float64(b.To - b.From)
-			sum += q.Blocks[m] * complex(n, 0)
-			weight += n
-		}
-		q.Z = sum / complex(weight, 0)
+		l.mean(q)
 	}
+}
+
+// mean sets a line's mean phasor from those of the blocks.
+func (l *Lines) mean(q *Line) {
+	sum, weight := complex(0, 0), 0.0
+	for m, b := range l.Blocks {
+		n := float64(b.To - b.From)
+		sum += q.Blocks[m] * complex(n, 0)
+		weight += n
+	}
+	q.Z = sum / complex(weight, 0)
 }
 
 // measure reads the noise that is left and takes its share off the lines'

@@ -34,9 +34,13 @@ func (l *Lines) residual(v *Survey) *spectrum.Density {
 	w := spectrum.BlackmanHarris(m)
 	power, count, next := 0.0, 0, 0
 	r := l.newRemover(l.standing(v, float64(w.NENBW)*s.RateHz/float64(m)))
+	low := l.newSlow()
 	src := func(dst []float64, at int) int {
 		k := s.Read(dst, at)
 		r.take(dst[:k], at)
+		if low != nil {
+			low.push(dst[:k])
+		}
 		for _, x := range dst[:k] {
 			power += x * x
 		}
@@ -51,6 +55,9 @@ func (l *Lines) residual(v *Survey) *spectrum.Density {
 			break
 		}
 	}
+	if low != nil {
+		low.finish()
+	}
 	if count > 0 {
 		l.Residual = power / float64(count)
 	}
@@ -61,12 +68,15 @@ func (l *Lines) residual(v *Survey) *spectrum.Density {
 // those mains orders that the noise alone could make, where the resolution
 // leaves sides beside every line to fill its place from.
 func (l *Lines) standing(v *Survey, rbwHz float64) []*Line {
-	if rbwHz >= fineHz {
+	if rbwHz >= fineHz && !l.slowPays() {
 		return l.all()
 	}
 	var out []*Line
 	M := float64(len(l.Blocks))
 	for _, q := range l.all() {
+		if q.weak {
+			continue
+		}
 		if l.isMains(q) {
 			k := min(int(q.Hz/v.StepHz+0.5), len(v.Floor)-1)
 			share := v.Floor[k] * l.Sig.RateHz / float64(l.Blocks[0].To-l.Blocks[0].From)
