@@ -8,6 +8,7 @@ func (a *assembly) holdsNumbers() []bool {
 		k := a.t.col[c].count
 		numeric[c] = k[number]+k[clock] > 0
 	}
+	a.findKeys()
 	a.beside = a.findBeside(numeric)
 	for c, is := range a.beside {
 		if is {
@@ -44,6 +45,10 @@ func (a *assembly) atEnds(c int) bool {
 func (a *assembly) findBeside(numeric []bool) []bool {
 	beside := make([]bool, a.lay.width)
 	n := a.t.n
+	filledTo := make([]int, a.lay.width)
+	for c := range filledTo {
+		filledTo[c] = a.t.col[c].lastFilled(n)
+	}
 	for c := 0; c < a.lay.width; c++ {
 		k := &a.t.col[c]
 		if k.count[prose] == 0 || numeric[c] && k.count[number]*4 > k.count[prose] {
@@ -58,12 +63,12 @@ func (a *assembly) findBeside(numeric []bool) []bool {
 		if end > maxBeside || k.count[prose]*2 < end {
 			continue
 		}
-		if end >= n && !a.knownSetting(c, end) {
+		if end >= n && !a.keyed[c] {
 			continue
 		}
 		for d := c; d < a.lay.width; d++ {
 			kd := &a.t.col[d]
-			if d > c && kd.count[number]+kd.count[clock] > 0 && (end < n && kd.lastFilled(n) > end || end >= n && d > c+1) {
+			if d > c && kd.count[number]+kd.count[clock] > 0 && (end < n && filledTo[d] > end || end >= n && d > c+1) {
 				break
 			}
 			if d > c+1 && kd.count[prose] > 0 && a.isKeyColumn(d) {
@@ -75,8 +80,10 @@ func (a *assembly) findBeside(numeric []bool) []bool {
 	return beside
 }
 
+// isKeyColumn says whether column c names settings whose values stand to its
+// right.
 func (a *assembly) isKeyColumn(c int) bool {
-	return c+1 < a.lay.width && a.t.col[c+1].count[number] > 0 && a.knownSetting(c, min(a.t.n, maxBeside))
+	return a.keyed[c] && c+1 < a.lay.width && a.t.col[c+1].count[number] > 0
 }
 
 // lastFilled returns the row after the last one with a value.
@@ -88,22 +95,50 @@ func (k *column) lastFilled(n int) int {
 	return end
 }
 
-// knownSetting says whether column c names a known setting in its first rows.
-func (a *assembly) knownSetting(c, rows int) bool {
-	found := false
-	a.firstRows(rows, func(_ int, cells [][]byte) {
-		if c < len(cells) && settingWord(words(trimmed(cells[c]))) {
-			found = true
+// findKeys marks the columns that name a known setting in the first rows.
+func (a *assembly) findKeys() {
+	a.keyed = make([]bool, a.lay.width)
+	a.firstRows(func(_ int, cells [][]byte) {
+		for c, b := range cells[:min(len(cells), len(a.keyed))] {
+			if !a.keyed[c] && a.t.col[c].count[prose] > 0 && settingWord(words(trimmed(b))) {
+				a.keyed[c] = true
+			}
 		}
 	})
-	return found
+}
+
+// readBeside takes the settings that stand beside the samples.
+func (a *assembly) readBeside() {
+	var keys []int
+	for c, is := range a.beside {
+		if is && (c == 0 || !a.beside[c-1] || a.isKeyColumn(c)) {
+			keys = append(keys, c)
+		}
+	}
+	if len(keys) == 0 {
+		return
+	}
+	a.firstRows(func(line int, cells [][]byte) {
+		for i, c := range keys {
+			var values []string
+			for d := c + 1; d < len(cells) && d < len(a.beside) && a.beside[d] && (i+1 == len(keys) || d < keys[i+1]); d++ {
+				if w := words(trimmed(cells[d])); w != "" {
+					values = append(values, w)
+				}
+			}
+			if c < len(cells) {
+				a.takePair(words(trimmed(cells[c])), values, line)
+			}
+		}
+	})
+	a.assume("settings in %s beside the samples", plural(len(keys), "column"))
 }
 
 // firstRows splits the first rows of samples again.
-func (a *assembly) firstRows(rows int, do func(line int, cells [][]byte)) {
+func (a *assembly) firstRows(do func(line int, cells [][]byte)) {
 	p, line := a.lay.start, a.lay.line
 	var cells [][]byte
-	for i := 0; i < rows && p < len(a.text); {
+	for i := 0; i < min(a.t.n, maxBeside) && p < len(a.text); {
 		text, next, n := logicalLine(a.text, p)
 		if filled(text) {
 			cells = split(text, a.lay.sep, cells)

@@ -10,13 +10,19 @@ import (
 // checkBreaches judges text among the samples: a header or settings repeated,
 // remarks, or the head of another table, which is refused.
 func (a *assembly) checkBreaches() error {
+	before := map[string]bool{}
+	if len(a.t.breaches) > 0 {
+		for _, r := range a.lay.pre {
+			before[string(r.text)] = true
+		}
+	}
 	for i := range a.t.breaches {
 		b := &a.t.breaches[i]
 		for _, r := range b.rows {
 			if err := a.checkStray(r); err != nil {
 				return err
 			}
-			if err := a.checkOther(r, len(b.rows)); err != nil {
+			if err := a.checkOther(r, len(b.rows), before); err != nil {
 				return err
 			}
 		}
@@ -55,12 +61,11 @@ func (a *assembly) checkStray(r row) error {
 	return nil
 }
 
-// checkOther refuses the head of a table unlike the first one.
-func (a *assembly) checkOther(r row, rows int) error {
-	for _, p := range a.lay.pre {
-		if string(p.text) == string(r.text) {
-			return nil
-		}
+// checkOther refuses the head of a table unlike the first one. before holds
+// the rows of text before the samples.
+func (a *assembly) checkOther(r row, rows int, before map[string]bool) error {
+	if before[string(r.text)] {
+		return nil
 	}
 	second := func(what string) error {
 		return a.fault(r.line, recording.ErrUnsupported, "a second table begins here: "+what, "save each table as a file of its own")

@@ -33,12 +33,13 @@ type sampled struct {
 	text []byte
 }
 
-// windows takes up to 300 filled lines each from the beginning, the middle
-// and the end of the text, or all lines of a small file.
+// windows takes up to 300 filled lines (256 KiB, but 8 lines at least) each
+// from the beginning, the middle and the end of the text, or all lines of a
+// small file.
 func windows(b []byte, line int) []sampled {
-	const lines, span = 300, 1 << 16
+	const lines, span, most = 300, 1 << 16, 1 << 18
 	take := func(p, line int) (got []sampled, next int) {
-		for p < len(b) && len(got) < lines {
+		for from := p; p < len(b) && len(got) < lines && (p-from < most || len(got) < 8); {
 			text, next, n := logicalLine(b, p)
 			if len(bytes.Trim(text, " \t\x00,;")) > 0 && len(text) <= maxRow {
 				got = append(got, sampled{line, text})

@@ -22,23 +22,7 @@ func (a *assembly) readSettings() {
 			a.readPair(r)
 		}
 	}
-	for c := 0; c < a.lay.width; c++ {
-		if a.beside[c] && (c == 0 || !a.beside[c-1] || a.isKeyColumn(c)) {
-			a.firstRows(min(a.t.n, maxBeside), func(line int, cells [][]byte) {
-				if c >= len(cells) {
-					return
-				}
-				key := words(trimmed(cells[c]))
-				var values []string
-				for d := c + 1; d < len(cells) && d < len(a.beside) && a.beside[d]; d++ {
-					if w := words(trimmed(cells[d])); w != "" {
-						values = append(values, w)
-					}
-				}
-				a.takePair(key, values, line)
-			})
-		}
-	}
+	a.readBeside()
 	for _, c := range a.notes {
 		h := a.heads.col[c]
 		kind, unit := settingOf(h.full)

@@ -55,7 +55,7 @@ func (a *assembly) readTime() error {
 	if k.glued > 0 {
 		a.grain = rounding(k.last, k.digits)
 	}
-	a.assume("time from %s (%s), in %s (%s)", a.title(a.time), a.how0, unitName(f), from)
+	a.assume("time from %s (%s), in %s (%s)", a.title(a.time), a.timeFrom, unitName(f), from)
 	a.turn()
 	return nil
 }

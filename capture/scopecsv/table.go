@@ -4,7 +4,6 @@ import (
 	"fmt"
 	"math"
 	"strconv"
-	"strings"
 
 	"benchslip/capture/recording"
 )
@@ -35,6 +34,7 @@ type assembly struct {
 	heads  *heads
 	set    *settings
 	beside []bool // columns of settings beside the samples
+	keyed  []bool // columns that name a known setting in the first rows
 	notes  []int  // columns with one or two values
 	role   []role
 	info   recording.Info
@@ -42,7 +42,7 @@ type assembly struct {
 	time       int                   // column of time; -1: none
 	index      int                   // column that counts rows; -1: none
 	millis     int                   // column of milliseconds beside a clock of whole seconds; -1: none
-	how0       string                // how the time column was found
+	timeFrom   string                // how the time column was found
 	maybeCount bool                  // the time column may be a count
 	stamp      []float64             // s, one a row; nil without time column
 	grain      func(float64) float64 // rounding of a stamp, s
@@ -104,14 +104,6 @@ func (a *assembly) title(c int) string {
 	return "column " + strconv.Itoa(c+1)
 }
 
-// name is a channel's name for messages.
-func chName(n int, c recording.Channel) string {
-	if c.Name == "" {
-		return fmt.Sprintf("channel %d", n)
-	}
-	return fmt.Sprintf("channel %d %q", n, short(c.Name))
-}
-
 // plural counts things.
 func plural(n int, one string) string {
 	if n == 1 {
@@ -155,5 +147,3 @@ func (a *assembly) finish() {
 		a.assume("%s before rows left out", plural(a.t.nuls, "NUL byte"))
 	}
 }
-
-var _ = strings.TrimSpace

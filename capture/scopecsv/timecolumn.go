@@ -92,7 +92,7 @@ func (a *assembly) timeByOption() error {
 		return a.fault(a.headLine(), recording.ErrAmbiguous, fmt.Sprintf("no column of numbers is called %q", want), "correct csv.time_column in the job file: a header text or a number from 1")
 	}
 	a.setTime(found)
-	a.how0 = "csv.time_column of the job"
+	a.timeFrom = "csv.time_column of the job"
 	return nil
 }
 
@@ -127,13 +127,13 @@ func (a *assembly) timeByLook() error {
 		for _, c := range list {
 			if a.time < 0 && (a.axisLike(c) || len(list) == 1 && timeWord(a.heads.col[c].full)) {
 				a.setTime(c)
-				a.how0 = "its header"
+				a.timeFrom = "its header"
 			}
 		}
 	}
 	if a.time < 0 && len(byClock) > 0 {
 		a.setTime(byClock[0])
-		a.how0 = "its clock times"
+		a.timeFrom = "its clock times"
 	}
 	if a.time < 0 {
 		a.timeByShape()
@@ -256,7 +256,7 @@ func (a *assembly) timeByShape() {
 				// Two bare columns are seconds and volts; whole numbers may
 				// as well be a count.
 				a.setTime(c)
-				a.how0 = "two columns without a header"
+				a.timeFrom = "two columns without a header"
 				a.maybeCount = true
 				return
 			}
@@ -269,7 +269,7 @@ func (a *assembly) timeByShape() {
 					hd := a.heads.col[d]
 					if hd.full == "" && others > 1 && hd.q == unknown && a.evenAxis(d) && !a.counting(d) {
 						a.setTime(d)
-						a.how0 = "its even steps"
+						a.timeFrom = "its even steps"
 					}
 					break
 				}
@@ -282,9 +282,9 @@ func (a *assembly) timeByShape() {
 		if h.full == "" || !channelName(h.name) {
 			if a.axisLike(c) && (h.full != "" || a.t.col[c].count[number] == a.t.n) {
 				a.setTime(c)
-				a.how0 = "its even steps"
+				a.timeFrom = "its even steps"
 				if h.full == "" {
-					a.how0 = "its place and even steps, no header"
+					a.timeFrom = "its place and even steps, no header"
 				}
 			}
 		}
