@@ -3,10 +3,13 @@ package measures
 
 import (
 	"benchslip/analyze"
+	"benchslip/analyze/channels"
 	"benchslip/analyze/commonmode"
 	"benchslip/analyze/hum"
+	"benchslip/analyze/impedance"
 	"benchslip/analyze/level"
 	"benchslip/analyze/noise"
+	"benchslip/analyze/response"
 	"benchslip/analyze/tone"
 )
 
@@ -19,6 +22,9 @@ func All() []*analyze.Measure {
 		noise.Measures(),
 		hum.Measures(),
 		commonmode.Measures(),
+		response.Measures(),
+		channels.Measures(),
+		impedance.Measures(),
 	} {
 		all = append(all, list...)
 	}
