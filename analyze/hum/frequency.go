@@ -61,33 +61,91 @@ func runMainsFrequency(p *analyze.Pass) analyze.Result {
 // frequency is the mean mains frequency over the span and its standard
 // uncertainty, the time base's left out.
 //
-// The track of a comb minds all orders, the high ones most. Where their phases
-// wander, it follows them and the fundamental turns against it; the
-// fundamental is the supply's own, so its turning from the first block to the
-// last corrects the mean.
+// The track of a comb holds the frequencies of its blocks; phases tell the mean
+// better. What an order h with phasors turned back by the track still turns
+// from the first block to the last, psi, corrects the mean by psi/(2 pi h T),
+// with a variance of s/P over (2 pi h T)^2 (s the noise share of a block).
+// Orders that keep step are averaged by their weights. Where they do not, the
+// phases of harmonics wander; the fundamental is then the supply's own.
 func frequency(l *stage.Lines) (hz, u float64) {
-	hz, u = l.MainsHz, stage.MainsHzU(l)
+	if l.MainsTrack == nil {
+		return l.MainsHz, 0
+	}
+	hz, u = l.MainsTrack.MeanNu()*l.Sig.RateHz, stage.MainsHzU(l)
 	M := len(l.Blocks)
-	if M < 3 || len(l.Mains) == 0 || l.Mains[0].Dropped || l.Mains[0].Power < 20*l.Mains[0].Share {
+	if M < 3 || !l.MainsFound {
 		return hz, u
 	}
-	q := l.Mains[0]
-	phase := unwrapped(q.Blocks)
 	T := (l.Blocks[M-1].Middle() - l.Blocks[0].Middle()) / l.Sig.RateHz
-	turned := phase[M-1] - phase[0]
-	// Each phase scatters by sqrt(s/2P) rad.
-	noise := math.Sqrt(q.Share / q.Power)
-	if math.Abs(turned) < 3*noise {
+	var orders []turning
+	for _, q := range l.Mains {
+		if q.Dropped || q.Power < 20*q.Share {
+			continue
+		}
+		per := 2 * math.Pi * float64(q.Order) * T
+		o := turning{order: q.Order, u: math.Sqrt(q.Share/q.Power) / per, path: unwrapped(q.Blocks)}
+		for m := range o.path {
+			o.path[m] /= per
+		}
+		orders = append(orders, o)
+	}
+	if len(orders) == 0 {
 		return hz, u
 	}
-	// What the half blocks at both ends may add: as much as the phase's steps
-	// depart from its mean step.
-	v := 0.0
-	for m := 1; m < M; m++ {
-		d := phase[m] - phase[m-1] - turned/float64(M-1)
-		v += d * d / float64(M-1)
+	mean, chi := average(orders)
+	dof := float64(len(orders) - 1)
+	if chi > dof+4*math.Sqrt(2*dof)+4 {
+		if orders[0].order == 1 {
+			mean = orders[0]
+		} else {
+			mean.u *= math.Sqrt(chi / dof)
+		}
 	}
-	return hz + turned/(2*math.Pi*T), math.Hypot(noise, math.Sqrt(v)) / (2 * math.Pi * T)
+	// Both ends go on for half a block with the turning of the blocks there,
+	// which scatters by sqrt(2.5) of the ends themselves, and by what bends.
+	step := func(m int) float64 { return mean.path[m] - mean.path[m-1] }
+	turned := mean.path[M-1] - mean.path[0] + (step(1)+step(M-1))/2
+	bend := 0.0
+	for m := 2; m < M; m++ {
+		d := step(m) - step(m-1)
+		bend += d * d / float64(M-2)
+	}
+	// The track's own ends rest on the frequencies of single blocks.
+	ends := 2 * u / math.Sqrt(float64(M))
+	span := l.Sig.DurationS()
+	return hz + turned*T/span, math.Hypot(ends, math.Hypot(1.6*mean.u, math.Sqrt(bend))*T/span)
+}
+
+// turning is what an order says of the mean frequency: its phase over order
+// and 2 pi T at each block, Hz, and the uncertainty of last less first.
+type turning struct {
+	order int
+	u     float64
+	path  []float64
+}
+
+// average is the weighted mean of turnings and the chi-square of their ends
+// about it.
+func average(list []turning) (mean turning, chi float64) {
+	mean.path = make([]float64, len(list[0].path))
+	weight := 0.0
+	for _, o := range list {
+		w := 1 / (o.u * o.u)
+		weight += w
+		for m, x := range o.path {
+			mean.path[m] += w * (x - o.path[0])
+		}
+	}
+	for m := range mean.path {
+		mean.path[m] /= weight
+	}
+	mean.u = 1 / math.Sqrt(weight)
+	last := len(mean.path) - 1
+	for _, o := range list {
+		d := (o.path[last] - o.path[0] - mean.path[last]) / o.u
+		chi += d * d
+	}
+	return mean, chi
 }
 
 // unwrapped are the phases of successive phasors in rad, without jumps.
