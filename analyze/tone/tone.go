@@ -153,37 +153,6 @@ func runPhase(p *analyze.Pass) analyze.Result {
 	return r
 }
 
-var polarity = &analyze.Measure{
-	Name:     "polarity",
-	Title:    "whether the output follows (+1) or inverts (-1) the input",
-	Doc:      "From the phase of the tone: +1 when cos(phase) > 0.5, -1 when it is below -0.5, else it cannot be told from this tone. No uncertainty band.",
-	Formula:  "sign(cos arg(U_out/U_in))",
-	Standard: "common practice",
-	Unit:     "",
-	Roles:    []string{"take"},
-	Keys:     []string{"at"},
-	Run:      runPolarity,
-}
-
-func runPolarity(p *analyze.Pass) analyze.Result {
-	h, bad := phased(p)
-	if bad != nil {
-		return analyze.RefuseWith(count, bad)
-	}
-	ph := cmplx.Phase(h.Lo.Phasor() / h.Li.Phasor())
-	c := math.Cos(ph)
-	v := math.Copysign(1, c)
-	if math.Abs(c) <= 0.5 {
-		return analyze.Refuse(count, analyze.NotEnoughPoints,
-			fmt.Sprintf("the output is %.1f deg from the input at %.6g Hz: neither in phase nor inverted", ph*180/math.Pi, h.Tone.Hz),
-			"use a lower or middle frequency, or the pulse stimulus")
-	}
-	r := analyze.Result{Value: &v, Unit: count}
-	finish(&r, &budget.Budget{}, p, h)
-	r.Details["phase_deg"] = ph * 180 / math.Pi
-	return r
-}
-
 var frequency = &analyze.Measure{
 	Name:     "tone_frequency",
 	Title:    "frequency of the tone",
