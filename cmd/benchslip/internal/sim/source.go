@@ -124,6 +124,3 @@ func (c Curve) HarmonicsOf(a float64) [4]float64 {
 		c.K3 * a * a * a / 4,
 	}
 }
-
-// parallel is the impedance of two in parallel.
-func parallel(a, b complex128) complex128 { return a * b / (a + b) }
