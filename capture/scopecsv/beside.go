@@ -19,13 +19,24 @@ func (a *assembly) holdsNumbers() []bool {
 	if a.t.n >= 10 {
 		for c, is := range numeric {
 			k := a.t.col[c].count
-			if n := k[number] + k[clock]; is && n <= 2 && (k[blank]+k[prose])*5 >= a.t.n*4 && a.atEnds(c) {
+			if n := k[number] + k[clock]; is && (k[clock] > 0 || a.overSetting(c)) && n <= 2 && (k[blank]+k[prose])*5 >= a.t.n*4 && a.atEnds(c) {
 				numeric[c] = false
 				a.notes = append(a.notes, c)
 			}
 		}
 	}
 	return numeric
+}
+
+// overSetting says whether a setting's name stands over column c in one of
+// the last rows before the samples.
+func (a *assembly) overSetting(c int) bool {
+	for i := max(0, len(a.lay.pre)-3); i < len(a.lay.pre); i++ {
+		if cells := split(a.lay.pre[i].text, a.lay.sep, nil); c < len(cells) && settingWord(words(trimmed(cells[c]))) {
+			return true
+		}
+	}
+	return false
 }
 
 // atEnds says whether the values of a column all stand in the first three rows

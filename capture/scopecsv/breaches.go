@@ -36,11 +36,12 @@ func (a *assembly) checkBreaches() error {
 			return err
 		}
 	}
-	// Before the samples one such row may be anything; two are samples.
+	// Before the samples one such row may be anything; two are samples, and so
+	// is the last one.
 	var strays []row
-	for _, r := range a.lay.pre {
-		if a.otherSeparator(r.text) != 0 {
-			if strays = append(strays, r); len(strays) == 2 {
+	for i, r := range a.lay.pre {
+		if a.lay.otherSeparator(r.text) != 0 {
+			if strays = append(strays, r); len(strays) == 2 || i == len(a.lay.pre)-1 {
 				return a.checkStray(strays[0])
 			}
 		}
@@ -54,9 +55,8 @@ func (a *assembly) checkStray(r row) error {
 	if _, kinds := a.lay.profile(r.text, nil, nil); a.lay.otherClock(kinds) {
 		return a.twoClocks(r)
 	}
-	if sep := a.otherSeparator(r.text); sep != 0 {
-		return a.fault(r.line, recording.ErrFormat, fmt.Sprintf("cells are parted by %s here and by %s in other rows (%q)", sepName(sep), sepName(a.lay.sep), short(words(r.text))),
-			"export it again without a detour through a spreadsheet")
+	if sep := a.lay.otherSeparator(r.text); sep != 0 {
+		return a.mixedSeparators(a.lay, r, sep)
 	}
 	return nil
 }

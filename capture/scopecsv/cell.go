@@ -24,7 +24,6 @@ type style struct {
 	sep   byte // ',', ';', '\t', '|', or ' ' for runs of blanks and tabs
 	mark  byte // decimal mark, '.' or ','
 	group byte // digit grouping in threes, 0 for none
-	month bool // dates with slashes are month/day
 }
 
 // cell is one cell, read.

@@ -54,8 +54,8 @@ var damages = []struct {
 		i := len(l)/2 + r.IntN(5)
 		return slices.Insert(l, i, l[i])
 	}},
-	{"other separators from the middle on", func(l [][]byte, r *rand.Rand) [][]byte {
-		for i := len(l) / 2; i < len(l); i++ {
+	{"other separators from some row on", func(l [][]byte, r *rand.Rand) [][]byte {
+		for i := 1 + r.IntN(len(l)-1); i < len(l); i++ {
 			l[i] = bytes.Map(func(c rune) rune {
 				switch c {
 				case ',', '\t', '|':
@@ -107,15 +107,15 @@ func digitAt(b []byte, r *rand.Rand) int {
 	return at[r.IntN(len(at))]
 }
 
-// edit changes one line in the second half, not the last.
+// edit changes one line, not the last.
 func edit(l [][]byte, r *rand.Rand, do func([]byte) []byte) [][]byte {
-	i := len(l)/2 + r.IntN(len(l)/2-2)
+	i := r.IntN(len(l) - 2)
 	l[i] = do(l[i])
 	return l
 }
 
 func insert(l [][]byte, r *rand.Rand, s string) [][]byte {
-	return slices.Insert(l, len(l)/2+r.IntN(len(l)/2-2), []byte(s))
+	return slices.Insert(l, r.IntN(len(l)-2), []byte(s))
 }
 
 // harmless lists damages that leave nothing to see: no time column shows a
@@ -126,7 +126,7 @@ func harmless(shape *table, damage string) bool {
 		timed = timed || bytes.Contains([]byte(a), []byte("time from column")) || bytes.Contains([]byte(a), []byte("counts the rows"))
 	}
 	switch damage {
-	case "rows swapped", "row lost", "row twice", "row of other numbers":
+	case "rows swapped", "row lost", "row twice", "row of other numbers", "cell emptied":
 		return !timed
 	}
 	return false
@@ -155,7 +155,7 @@ func TestDamageIsNeverSilent(t *testing.T) {
 			t.Fatal(err)
 		}
 		for _, d := range damages {
-			for seed := range uint64(2) {
+			for seed := range uint64(3) {
 				r := rand.New(rand.NewPCG(seed, 1))
 				lines := bytes.SplitAfter(slices.Clone(raw), []byte("\n"))
 				if len(lines[len(lines)-1]) == 0 {

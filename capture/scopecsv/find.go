@@ -296,11 +296,21 @@ func (f *file) stepBack(lay *layout) error {
 	for len(lay.pre) > 0 {
 		r := lay.pre[len(lay.pre)-1]
 		buf, kinds := lay.profile(r.text, nil, nil)
-		if lay.width < 2 || len(buf) <= lay.first || kinds[lay.first] != number && kinds[lay.first] != clock {
+		if lay.width < 2 || len(buf) <= lay.first {
+			return nil
+		}
+		like := kinds[lay.first] == prose && numberLike(trimmed(buf[lay.first]))
+		if !like && kinds[lay.first] != number && kinds[lay.first] != clock {
 			return nil
 		}
 		if len(buf) > lay.width {
 			return f.wideRow(lay, r.line, r.text)
+		}
+		if sep := lay.otherSeparator(r.text); like && sep != 0 {
+			return f.mixedSeparators(lay, r, sep)
+		}
+		if like && len(buf) < lay.width {
+			return f.narrowRow(lay, r.line)
 		}
 		if lay.otherClock(kinds) {
 			return f.twoClocks(r)

@@ -93,9 +93,7 @@ func shapeOf(b []byte) shape {
 			return noNumber
 		}
 	}
-	if bytes.HasPrefix(b, minusSign) {
-		b = b[len(minusSign):]
-	}
+	b = bytes.TrimPrefix(b, minusSign)
 	whole := func(mark byte) bool {
 		_, n := num.Scan(b, mark)
 		if n == 0 || n == len(b) {
@@ -349,4 +347,41 @@ func splitDecimals(rows []sampled) (sampled, bool) {
 		}
 	}
 	return hint, found
+}
+
+// otherSeparator tells a separator other than the file's under which text
+// falls into two or more numbers, 0 when there is none.
+func (lay *layout) otherSeparator(text []byte) byte {
+	for _, s := range separators {
+		if s.sep == lay.sep {
+			continue
+		}
+		numbers, clocks, texts, first := 0, 0, 0, noNumber
+		for i, c := range split(text, s.sep, nil) {
+			sh := shapeOf(c)
+			if i == 0 || first == emptyCell {
+				first = sh
+			}
+			switch sh {
+			case clockCell:
+				clocks++
+			case noNumber:
+				texts++
+			case emptyCell, markCell:
+			default:
+				numbers++
+			}
+		}
+		if numbers > 0 && numbers+clocks >= 2 && first != noNumber && (texts == 0 || s.sep != ' ') {
+			return s.sep
+		}
+	}
+	return 0
+}
+
+// mixedSeparators refuses a row whose cells are parted by another separator
+// than those of the file.
+func (f *file) mixedSeparators(lay *layout, r row, sep byte) error {
+	return f.fault(r.line, recording.ErrFormat, fmt.Sprintf("cells are parted by %s here and by %s in other rows (%q)", sepName(sep), sepName(lay.sep), short(words(r.text))),
+		"export it again without a detour through a spreadsheet")
 }

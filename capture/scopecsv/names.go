@@ -53,6 +53,13 @@ func (f *file) findHeads(lay *layout, numeric []bool) (*heads, error) {
 		if h.named || !f.isNames(lay, cells, numeric, units != nil, marker) {
 			break
 		}
+		for c, t := range cells {
+			if c >= lay.width || !numeric[c] {
+				if k := lay.read([]byte(t)).kind; k == number {
+					return nil, f.fault(lay.pre[i].line, recording.ErrAmbiguous, fmt.Sprintf("the header holds a number (%q) where no column of numbers is", short(t)), "mend the row: a line end may be lost")
+				}
+			}
+		}
 		h.named, h.line = true, lay.pre[i].line
 		h.pre = append(h.pre, i)
 		h.extra = map[int]string{}
@@ -341,7 +348,7 @@ func (f *file) misfit(lay *layout, r row, numeric []bool) error {
 	kind, _ := settingOf(key)
 	setting := kind != noSetting && (kind != otherSetting || filled <= 2) || filled == 2 && value != "" && lay.read([]byte(value)).kind == number
 	timed := len(cells) > 0 && timeWord(words(trimmed(bytes.TrimLeft(cells[0], commentMarks))))
-	if setting && !timed || filled == 0 || text < filled {
+	if setting && !timed || filled == 0 || text < filled && !(filled > 2 && hasUnit(t)) {
 		return nil
 	}
 	if hasUnit(t) || timed || filled > 1 && filled == text && count > filled {

@@ -129,7 +129,7 @@ func (a *assembly) checkText(c int, numeric bool) error {
 		return a.fault(k.text, recording.ErrFormat, fmt.Sprintf("a cell holds structured text (%q): a summary, not samples", short(k.say)), "export the samples as a table of numbers")
 	}
 	if !numeric {
-		if sign := signOf(k); data == 0 && k.varies == 0 && (sign == "+" || sign == "-") || data == 0 && k.words == false && k.say == "+" {
+		if sign := signOf(k); data == 0 && k.varies == 0 && (sign == "+" || sign == "-") || data == 0 && !k.words && k.say == "+" {
 			return a.fault(max(k.text, a.lay.line), recording.ErrFormat, fmt.Sprintf("column %d holds signs apart from their numbers", c+1), "export numbers with their signs")
 		}
 		if data == 0 {
@@ -144,7 +144,7 @@ func (a *assembly) checkText(c int, numeric bool) error {
 		return nil
 	}
 	if k.count[prose] > 0 {
-		if sep := a.otherSeparator([]byte(k.say)); sep != 0 {
+		if sep := a.lay.otherSeparator([]byte(k.say)); sep != 0 {
 			return a.fault(k.text, recording.ErrFormat, fmt.Sprintf("cells are parted by %s and by %s in one file (%q)", sepName(a.lay.sep), sepName(sep), short(k.say)), "export it again without a detour through a spreadsheet")
 		}
 		if k.count[prose]*10 > data+k.count[prose] && !extraWords[strings.ToLower(a.heads.col[c].name)] {
@@ -171,36 +171,6 @@ func signOf(k *column) string {
 		}
 	}
 	return ""
-}
-
-// otherSeparator tells a separator other than the file's under which text
-// falls into two or more numbers, 0 when there is none.
-func (a *assembly) otherSeparator(text []byte) byte {
-	for _, s := range separators {
-		if s.sep == a.lay.sep {
-			continue
-		}
-		numbers, clocks, texts, first := 0, 0, 0, noNumber
-		for i, c := range split(text, s.sep, nil) {
-			sh := shapeOf(c)
-			if i == 0 || first == emptyCell {
-				first = sh
-			}
-			switch sh {
-			case clockCell:
-				clocks++
-			case noNumber:
-				texts++
-			case emptyCell, markCell:
-			default:
-				numbers++
-			}
-		}
-		if numbers > 0 && numbers+clocks >= 2 && first != noNumber && (texts == 0 || s.sep != ' ') {
-			return s.sep
-		}
-	}
-	return 0
 }
 
 // frequencyAxis refuses a table over frequency: the first column's unit is Hz,

@@ -312,20 +312,22 @@ func (s *scanner) judge() int {
 	return isSamples
 }
 
-// numberLike says whether text looks like a damaged number, clock time or mark:
-// one word, beginning as they do, half of it digits.
+// numberLike says whether text looks like a damaged number or clock time: one
+// word, half of it digits, that begins as they do or has a decimal point.
 func numberLike(b []byte) bool {
-	if len(b) == 0 || !(b[0]-'0' <= 9 || b[0] == '-' || b[0] == '+' || b[0] == '.' || b[0] == '#') {
+	digits, point := 0, false
+	for i, c := range b {
+		switch {
+		case c == ' ':
+			return false
+		case c-'0' <= 9:
+			digits++
+		case (c == '.' || c == ',') && i > 0 && i+1 < len(b) && b[i-1]-'0' <= 9 && b[i+1]-'0' <= 9:
+			point = true
+		}
+	}
+	if len(b) == 0 || digits*2 < len(b) {
 		return false
 	}
-	digits := 0
-	for _, c := range b {
-		if c == ' ' {
-			return false
-		}
-		if c-'0' <= 9 {
-			digits++
-		}
-	}
-	return digits*2 >= len(b) || b[0] == '#'
+	return b[0]-'0' <= 9 || b[0] == '-' || b[0] == '+' || b[0] == '.' || point && len(b) > 3
 }

@@ -276,10 +276,7 @@ func (a *assembly) timeByShape() {
 			}
 			return
 		}
-		if channelName(h.name) && len(a.set.interval) > 0 {
-			return
-		}
-		if h.full == "" || !channelName(h.name) {
+		if h.full == "" || !channelName(h.name) || a.stepsAsStated(c) {
 			if a.axisLike(c) && (h.full != "" || a.t.col[c].count[number] == a.t.n) {
 				a.setTime(c)
 				a.timeFrom = "its even steps"
@@ -290,6 +287,18 @@ func (a *assembly) timeByShape() {
 		}
 		return
 	}
+}
+
+// stepsAsStated says whether a column steps by the interval that the settings
+// state.
+func (a *assembly) stepsAsStated(c int) bool {
+	v := a.t.col[c].v
+	for _, s := range a.set.interval {
+		if step := math.Abs(v[len(v)-1]-v[0]) / float64(max(1, len(v)-1)); math.Abs(step-s.v) < 0.01*s.v {
+			return true
+		}
+	}
+	return false
 }
 
 // channelName says whether a header names a channel or a voltage.

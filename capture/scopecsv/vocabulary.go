@@ -33,7 +33,7 @@ var settingNames = map[settingKind]string{
 		"datalength|samples per channel|points per channel|memory length|total samples|total points|" +
 		"segment size|point count|sample number|sample points|sampling points|block size|blocksize|" +
 		"data count|sample length|number of data|number of rows|rows|anzahl|wfm points|pts|" +
-		"number of readings|number of records|total records",
+		"number of readings|x size|size|number of records|total records",
 	scaleSetting: "volts per count|volt per count|v per count|v count|volts count|volts per lsb|v lsb|volt per lsb|" +
 		"v per lsb|lsb|lsb size|lsb value|volts per code|volts per bit|v bit|v per bit|scale v count|" +
 		"counts to volts|volts per adc count|v per adc count|y mult|ymult|y increment|yincrement|yinc|y inc|" +

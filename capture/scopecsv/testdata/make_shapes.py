@@ -285,7 +285,7 @@ bad("decimal-comma-in-comma-file", "Time,CH1\n" + rows(dc(t6), dc(a)), 2, "decim
 bad("decimal-comma-in-comma-file-bare", rows(dc(t6), dc(a)), 1, "decimal")
 bad("both-decimal-marks", "Time;CH1\n" + rows(t6, dc(a), sep=";"), 2, "decimal")
 bad("comma-thousands-or-decimals", "Time\tCH1\n" + rows(["%d" % i for i in range(N)], ["1,%03d" % (500 + i) for i in range(N)], sep="\t"), 2, "thousands")
-bad("separators-change", "Time,CH1\n" + rows(t6[:30], a[:30]) + rows(t6[30:], a[30:], sep=";"), 2, "semicolons", "format")
+bad("separators-change", "Time,CH1\n" + rows(t6[:30], a[:30]) + rows(t6[30:], a[30:], sep=";"), 31, "commas here", "format")
 bad("damaged-cells", "Time;CH1\n" + rows(t6[:40], a[:40], sep=";") + "".join("%s,%s\n" % r for r in zip(t6[40:], a[40:])), 42, "commas", "format")
 bad("wide-row", "Time,CH1\n" + rows(t6[:30], a[:30]) + "0.003,1.0,2.0\n" + rows(t6[30:], a[30:]), 32, "3 cells")
 bad("narrow-row", "Time,CH1,CH2\n" + rows(t6[:30], a[:30], b[:30]) + "0.003,1.0\n" + rows(t6[30:], a[30:], b[30:]), 32, "fewer cells")
