@@ -49,7 +49,7 @@ func (r *runner) check(row job.Row) slip.Check {
 	for _, t := range r.reads(row) {
 		out.Flags = append(out.Flags, r.weakening(row, t)...)
 	}
-	res := r.result(row)
+	res := r.unfit(row, r.result(row))
 	if name := out.Take; name != nil {
 		res.Flags = slices.Clone(res.Flags) // a stage may hold them too
 		for i := range res.Flags {
@@ -97,22 +97,13 @@ func (r *runner) weakening(row job.Row, t *analyze.Take) []slip.Flag {
 		return nil
 	}
 	w := t.Wiring.Over(row.Check.Params.Wiring)
-	in := t.Rec.Info()
-	var channels []int
-	for _, text := range []string{orOne(w.Out), w.In, w.Out2, w.Driven, w.Mains} {
-		if text == "" {
-			continue
-		}
-		if plus, minus, err := analyze.ResolveChannel(text, in); err == nil {
-			channels = append(channels, plus, minus)
-		}
-	}
+	l := role{take: t, span: w.Span}
+	l.Channels = channelsOf(t, w)
 	var out []slip.Flag
 	for _, f := range t.Flags {
-		if f.Channel != 0 && !slices.Contains(channels, f.Channel) || apart(f, w.Span) {
-			continue
+		if l.bears(f) {
+			out = append(out, judge.FlagOf(f))
 		}
-		out = append(out, judge.FlagOf(f))
 	}
 	return out
 }

@@ -12,6 +12,7 @@ import (
 	"sync"
 
 	"benchslip/analyze"
+	"benchslip/analyze/doubt"
 	"benchslip/analyze/intake"
 	"benchslip/analyze/job"
 	"benchslip/analyze/judge"
@@ -42,6 +43,8 @@ type runner struct {
 	job    *job.Job
 	opt    Options
 	stages *analyze.Stages
+
+	findings map[*analyze.Take][]doubt.Finding // all flags of each take
 }
 
 // Run executes the job. A missing or unreadable take does not stop it: rows
@@ -64,6 +67,9 @@ func Run(ctx context.Context, j *job.Job, opt Options) (*slip.Slip, error) {
 		return nil, err
 	}
 	r := &runner{job: j, opt: opt, stages: analyze.NewStages()}
+	if err := r.doubts(ctx, j.Takes, rows); err != nil {
+		return nil, err
+	}
 	s := &slip.Slip{Format: 1, Tool: slip.Tool{Name: "benchslip", Version: opt.Version},
 		Checks: make([]slip.Check, len(rows)), Takes: make([]slip.Take, len(j.Takes))}
 	err := parallel(ctx, opt.Workers, len(rows), func(i int) {
