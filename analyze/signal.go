@@ -40,6 +40,13 @@ func (s *Signal) Channel() int { return s.plus }
 // Minus is the number of the channel that is subtracted; 0: none.
 func (s *Signal) Minus() int { return s.minus }
 
+// Part is samples [from, to) of the signal, 0 <= from <= to <= Len, as a
+// signal of its own.
+func (s *Signal) Part(from, to int) *Signal {
+	return &Signal{Take: s.Take, Unit: s.Unit, RateHz: s.RateHz, StartS: s.StartS + float64(from)/s.RateHz, Gear: s.Gear, Step: s.Step,
+		plus: s.plus, minus: s.minus, plusScale: s.plusScale, minusScale: s.minusScale, from: s.from + int64(from), to: s.from + int64(to)}
+}
+
 // Scale is the factor from the file's samples to Unit.
 func (s *Signal) Scale() float64 { return s.plusScale }
 

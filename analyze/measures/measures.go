@@ -8,6 +8,7 @@ import (
 	"benchslip/analyze/hum"
 	"benchslip/analyze/impedance"
 	"benchslip/analyze/level"
+	"benchslip/analyze/limits"
 	"benchslip/analyze/noise"
 	"benchslip/analyze/response"
 	"benchslip/analyze/tone"
@@ -22,6 +23,7 @@ func All() []*analyze.Measure {
 		noise.Measures(),
 		hum.Measures(),
 		commonmode.Measures(),
+		limits.Measures(),
 		response.Measures(),
 		channels.Measures(),
 		impedance.Measures(),

@@ -14,6 +14,7 @@ type Heard struct {
 	Out, In *analyze.Signal // In nil without a second channel
 	Tone    *Tone
 	Lo, Li  *Lines
+	Steps   int // of the take, one of which was read; 0: not stepped
 }
 
 // Listen finds the tone of a role's take: searched in `in` when the take has
@@ -31,18 +32,53 @@ func ListenTo(p *analyze.Pass, t *analyze.Take, role string, orders int) (*Heard
 	return ListenAt(p, t, role, at, orders)
 }
 
-// ListenAt is ListenTo with the frequency asked for (0: found).
+// ListenAt is ListenTo with the frequency asked for (0: found). Of a stepped
+// take it hears one step.
 func ListenAt(p *analyze.Pass, t *analyze.Take, role string, at float64, orders int) (*Heard, *analyze.Refusal) {
-	h := &Heard{}
-	var bad *analyze.Refusal
-	if h.Out, bad = p.SignalOf(t, role, "out"); bad != nil {
+	out, in, steps, bad := Channels(p, t, role, at)
+	if bad != nil {
 		return nil, bad
 	}
-	if p.Wiring(t).In != "" {
-		if h.In, bad = p.SignalOf(t, role, "in"); bad != nil {
-			return nil, bad
-		}
+	h, bad := Hear(p, out, in, at, orders)
+	if h != nil {
+		h.Steps = steps
 	}
+	return h, bad
+}
+
+// Channels are the `out` and `in` (nil without one) of a take, of a stepped
+// one the step that lies at that frequency; steps is their number, 0 for takes
+// that are not stepped.
+func Channels(p *analyze.Pass, t *analyze.Take, role string, at float64) (out, in *analyze.Signal, steps int, bad *analyze.Refusal) {
+	if out, bad = p.SignalOf(t, role, "out"); bad != nil {
+		return nil, nil, 0, bad
+	}
+	search := out
+	if p.Wiring(t).In != "" {
+		if in, bad = p.SignalOf(t, role, "in"); bad != nil {
+			return nil, nil, 0, bad
+		}
+		search = in
+	}
+	all := Steps(p, search)
+	if len(all) == 0 {
+		return out, in, 0, nil
+	}
+	q, bad := StepFor(search, all, at)
+	if bad != nil {
+		return nil, nil, 0, bad
+	}
+	if in != nil {
+		in = in.Part(q.From, q.To)
+	}
+	return out.Part(q.From, q.To), in, len(all), nil
+}
+
+// Hear finds the tone in a pair of signals of one take: in `in` where there is
+// one (else nil), else in `out`.
+func Hear(p *analyze.Pass, out, in *analyze.Signal, at float64, orders int) (*Heard, *analyze.Refusal) {
+	h := &Heard{Out: out, In: in}
+	var bad *analyze.Refusal
 	search, other := h.Out, h.In
 	if h.In != nil {
 		search, other = h.In, h.Out
