@@ -10,6 +10,7 @@ import (
 	"benchslip/analyze/level"
 	"benchslip/analyze/limits"
 	"benchslip/analyze/noise"
+	"benchslip/analyze/oneshot"
 	"benchslip/analyze/response"
 	"benchslip/analyze/tone"
 )
@@ -27,6 +28,7 @@ func All() []*analyze.Measure {
 		response.Measures(),
 		channels.Measures(),
 		impedance.Measures(),
+		oneshot.Measures(),
 	} {
 		all = append(all, list...)
 	}
