@@ -296,11 +296,11 @@ func (f *file) stepBack(lay *layout) error {
 	for len(lay.pre) > 0 {
 		r := lay.pre[len(lay.pre)-1]
 		buf, kinds := lay.profile(r.text, nil, nil)
-		if lay.width < 2 || len(buf) <= lay.first {
+		if len(buf) <= lay.first {
 			return nil
 		}
 		like := kinds[lay.first] == prose && numberLike(trimmed(buf[lay.first]))
-		if !like && kinds[lay.first] != number && kinds[lay.first] != clock {
+		if !like && lay.width < 2 || !like && kinds[lay.first] != number && kinds[lay.first] != clock {
 			return nil
 		}
 		if len(buf) > lay.width {

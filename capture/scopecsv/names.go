@@ -3,6 +3,7 @@ package scopecsv
 import (
 	"bytes"
 	"fmt"
+	"slices"
 	"strings"
 
 	"benchslip/capture/recording"
@@ -11,91 +12,71 @@ import (
 // heads are the headers of the columns of samples.
 type heads struct {
 	col   []header
-	named bool // a header row was found
-	line  int  // the header row's line
-	pre   []int
+	named bool           // a header row was found
+	line  int            // its line
+	used  map[int]bool   // rows before the samples that belong to the header
 	extra map[int]string // names over columns without samples
 	under map[int]string // what the units row holds there
 }
 
-// comment marks that may stand before a header.
+// commentMarks may stand before a header.
 const commentMarks = "#%!*;/"
 
+// maxBetween is how many rows of settings or markers may stand between the
+// header and the samples.
+const maxBetween = 4
+
 // findHeads reads the names and units over the samples from the rows right
-// before them. columns tells which columns hold numbers.
+// before them, walking upward: a units row and a row of names, in either
+// order; couplings, markers such as "data" and settings may stand between.
+// numeric tells which columns hold numbers.
 func (f *file) findHeads(lay *layout, numeric []bool) (*heads, error) {
-	h := &heads{col: make([]header, lay.width)}
-	i := len(lay.pre) - 1
+	h := &heads{col: make([]header, lay.width), used: map[int]bool{}, extra: map[int]string{}, under: map[int]string{}}
 	var units []string
-	unitsLine := -1
-	marker := false
-	for ; i >= 0; i-- {
-		cells := f.cellsOf(lay, lay.pre[i], numeric)
-		if cells == nil { // one cell of prose over several columns: a marker such as "data"
-			if marker || h.named || hasUnit(words(lay.pre[i].text)) {
-				break
+	unitsLine, passed := 0, 0
+	for i := len(lay.pre) - 1; i >= 0 && passed <= maxBetween && !(h.named && units != nil); i-- {
+		r := lay.pre[i]
+		cells := f.cellsOf(lay, r, numeric)
+		switch {
+		case cells != nil && couplings(cells):
+			h.used[i] = true
+			continue
+		case cells != nil && units == nil && f.isUnits(lay, cells, numeric):
+			units, unitsLine = cells, r.line
+			h.used[i] = true
+			continue
+		case cells != nil && !h.named && f.isNames(lay, cells, numeric, units != nil, passed > 0) && !f.isRemark(lay, cells, numeric, i):
+			if err := f.takeNames(lay, h, cells, numeric, r); err != nil {
+				return nil, err
 			}
-			marker = true
+			h.used[i] = true
 			continue
 		}
-		if couplings(cells) {
-			h.pre = append(h.pre, i)
-			continue
-		}
-		if units == nil && f.isUnits(lay, cells, numeric) {
-			units, unitsLine = cells, i
-			h.pre = append(h.pre, i)
-			if h.named {
-				break
-			}
-			continue
-		}
-		if h.named || !f.isNames(lay, cells, numeric, units != nil, marker) {
+		if h.named {
 			break
 		}
-		for c, t := range cells {
-			if c >= lay.width || !numeric[c] {
-				if k := lay.read([]byte(t)).kind; k == number {
-					return nil, f.fault(lay.pre[i].line, recording.ErrAmbiguous, fmt.Sprintf("the header holds a number (%q) where no column of numbers is", short(t)), "mend the row: a line end may be lost")
-				}
+		if units == nil && !f.isSetting(lay, r) {
+			// A row right over the samples that cannot be laid over them may
+			// hold a name or unit that matters, or samples.
+			if err := f.misfit(lay, r, numeric, cells); err != nil {
+				return nil, err
 			}
 		}
-		h.named, h.line = true, lay.pre[i].line
-		h.pre = append(h.pre, i)
-		h.extra = map[int]string{}
-		for c, t := range cells {
-			if c < lay.width {
-				h.col[c] = readHeader(t)
-			}
-			if t != "" && (c >= lay.width || !numeric[c]) {
-				h.extra[c] = t
-			}
-		}
-		if units != nil {
-			break
-		}
-	}
-	if !h.named && units == nil && len(lay.pre) > 0 {
-		// A row that looks like a header but cannot be laid over the columns
-		// may hold a unit that matters.
-		last := lay.pre[len(lay.pre)-1]
-		if err := f.misfit(lay, last, numeric); err != nil {
-			return nil, err
-		}
+		passed++
 	}
 	for c := range h.col {
-		if c < len(units) && units[c] != "" && numeric[c] {
-			if !h.named {
-				h.col[c].full, h.col[c].name = units[c], units[c]
-			}
-			if unit, q, fac, ok := unitsCell(units[c]); ok {
-				h.col[c].unit, h.col[c].q, h.col[c].f, h.col[c].from = unit, q, fac, fmt.Sprintf("the units row, line %d", lay.pre[unitsLine].line)
-			}
+		if c >= len(units) || units[c] == "" || !numeric[c] {
+			continue
+		}
+		if !h.named {
+			h.col[c].full, h.col[c].name = units[c], units[c]
+		}
+		if unit, q, fac, ok := unitsCell(units[c]); ok {
+			h.col[c].unit, h.col[c].q, h.col[c].f, h.col[c].from = unit, q, fac, fmt.Sprintf("the units row, line %d", unitsLine)
 		}
 	}
 	// Settings over columns of their own: "Start", "Increment", their values
 	// in the row below, which may be missing.
-	h.under = map[int]string{}
 	for c := range h.extra {
 		h.under[c] = ""
 		if c < len(units) {
@@ -103,6 +84,72 @@ func (f *file) findHeads(lay *layout, numeric []bool) (*heads, error) {
 		}
 	}
 	return h, nil
+}
+
+// takeNames takes a row of names, and what stands over columns without samples.
+func (f *file) takeNames(lay *layout, h *heads, cells []string, numeric []bool, r row) error {
+	h.named, h.line = true, r.line
+	for c, t := range cells {
+		if c < lay.width {
+			h.col[c] = readHeader(t)
+		}
+		if t == "" || c < lay.width && numeric[c] {
+			continue
+		}
+		h.extra[c] = t
+		_, q, _, unit := unitsCell(t)
+		if k := lay.read([]byte(t)).kind; k == number || c >= lay.width && unit && (q == volts || q == seconds) {
+			return f.fault(r.line, recording.ErrAmbiguous, fmt.Sprintf("the header goes on (%q) where no column of numbers is", short(t)), "mend the row: a line end or separator may be lost")
+		}
+	}
+	return nil
+}
+
+// isSetting says whether a row is a setting or a comment by its look.
+func (f *file) isSetting(lay *layout, r row) bool {
+	if t := bytes.TrimLeft(r.text, " \t"); len(t) > 0 && bytes.IndexByte([]byte("#%!*;"), t[0]) >= 0 {
+		return !hasUnit(words(r.text))
+	}
+	key, _ := keyValue(r.text, lay.sep)
+	kind, _ := settingOf(key)
+	if kind == noSetting || timeWord(key) {
+		return false
+	}
+	filled := 0
+	for _, c := range split(r.text, lay.sep, nil) {
+		if len(trimmed(c)) > 0 {
+			filled++
+		}
+	}
+	return kind != otherSetting || filled <= 2
+}
+
+// isRemark says whether a lone word over one column is a remark: a header with
+// a unit, or a name that is known, stands right above it.
+func (f *file) isRemark(lay *layout, cells []string, numeric []bool, i int) bool {
+	only := ""
+	for c, t := range cells {
+		if t == "" || c < len(numeric) && !numeric[c] {
+			continue
+		}
+		if only != "" {
+			return false
+		}
+		only = t
+	}
+	if i == 0 || readHeader(only).q != unknown || channelName(only) {
+		return false
+	}
+	above := f.cellsOf(lay, lay.pre[i-1], numeric)
+	if above == nil || f.isSetting(lay, lay.pre[i-1]) {
+		return false
+	}
+	for c, t := range above {
+		if t != "" && c < len(numeric) && numeric[c] && (readHeader(t).q != unknown || channelName(t)) {
+			return true
+		}
+	}
+	return false
 }
 
 // cellsOf lays a row over the columns: by position when it is as wide as the
@@ -173,6 +220,20 @@ func (f *file) cellsOf(lay *layout, r row, numeric []bool) []string {
 	if lay.sep != ' ' {
 		if got := fit(parts); got != nil && (len(parts) > 1 || count == 1) {
 			return got
+		}
+		// The header may be parted otherwise than the samples.
+		for _, sep := range []byte{'\t', ';', ',', '|'} {
+			if count < 2 || sep == lay.sep || len(parts) > 1 {
+				continue
+			}
+			parts = parts[:0]
+			for _, c := range split(text, sep, nil) {
+				parts = append(parts, words(trimmed(c)))
+			}
+			if len(parts) == count && !slices.Contains(parts, "") {
+				return fit(parts)
+			}
+			parts = parts[:1]
 		}
 		return nil
 	}
@@ -319,23 +380,18 @@ func hasUnit(t string) bool {
 	return false
 }
 
-// misfit refuses a last row before the samples that looks like a header of
-// another width.
-func (f *file) misfit(lay *layout, r row, numeric []bool) error {
-	if f.cellsOf(lay, r, numeric) != nil {
-		return nil
-	}
+// misfit refuses a row right over the samples that is neither header nor
+// setting, yet names times or units, or mixes several words with numbers: a
+// header of another width, or one that ran into the first samples.
+func (f *file) misfit(lay *layout, r row, numeric []bool, cells []string) error {
 	t := words(r.text)
-	cells := split(r.text, lay.sep, nil)
-	filled, text := 0, 0
-	for _, c := range cells {
-		switch lay.read(c).kind {
-		case blank:
-		case prose:
+	text, numbers := 0, 0
+	for _, c := range split(r.text, lay.sep, nil) {
+		switch k := lay.read(c).kind; {
+		case k == prose:
 			text++
-			filled++
-		default:
-			filled++
+		case k != blank:
+			numbers++
 		}
 	}
 	count := 0
@@ -344,17 +400,18 @@ func (f *file) misfit(lay *layout, r row, numeric []bool) error {
 			count++
 		}
 	}
-	key, value := keyValue(r.text, lay.sep)
-	kind, _ := settingOf(key)
-	setting := kind != noSetting && (kind != otherSetting || filled <= 2) || filled == 2 && value != "" && lay.read([]byte(value)).kind == number
-	timed := len(cells) > 0 && timeWord(words(trimmed(bytes.TrimLeft(cells[0], commentMarks))))
-	if setting && !timed || filled == 0 || text < filled && !(filled > 2 && hasUnit(t)) {
-		return nil
+	first, _ := keyValue(r.text, lay.sep)
+	if lay.sep == ' ' {
+		first = strings.Fields(t + " x")[0]
 	}
-	if hasUnit(t) || timed || filled > 1 && filled == text && count > filled {
+	switch {
+	case text == 0 || text == 1 && numbers <= 1 && !hasUnit(t) && !timeWord(first):
+		return nil
+	case numbers == 0 && cells == nil && (hasUnit(t) || timeWord(first) || text > 1 && count > text && lay.sep != ' '),
+		text > 1 && numbers > 0 && (lay.sep != ' ' || hasUnit(t) || timeWord(first)):
 		return f.fault(r.line, recording.ErrAmbiguous,
-			fmt.Sprintf("the header %q has %d names, the rows below have %d columns of numbers", short(t), filled, count),
-			`say how the file is written: [takes.NAME.csv] separator, decimal or skip`)
+			fmt.Sprintf("the row %q over the samples has %d names, the rows below have %d columns of numbers", short(t), text+numbers, count),
+			`mend it, or say how the file is written: [takes.NAME.csv] separator, decimal or skip`)
 	}
 	return nil
 }

@@ -13,12 +13,8 @@ import (
 func (a *assembly) readSettings() {
 	s := &settings{text: map[string]string{}}
 	a.set = s
-	used := map[int]bool{}
-	for _, i := range a.heads.pre {
-		used[i] = true
-	}
 	for i, r := range a.lay.pre {
-		if !used[i] {
+		if !a.heads.used[i] {
 			a.readPair(r)
 		}
 	}

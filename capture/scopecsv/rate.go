@@ -193,6 +193,7 @@ func pairs(t []float64, zeros int) bool {
 // digit, both are normal: when each is frequent, or when the rare ones stand
 // evenly spaced as the rounding of an even time base places them (a Sturmian
 // sequence: the distances between them are two neighbouring whole numbers).
+// Any longer step is a gap then, since no rounding makes it.
 func (m *timing) normal(steps []float64) (low, high float64) {
 	q := m.q
 	if q < 0.2*m.median {
@@ -215,7 +216,7 @@ func (m *timing) normal(steps []float64) (low, high float64) {
 			lowest, highest = min(lowest, k), max(highest, k)
 		}
 	}
-	high = math.Max((float64(highest)+0.5)*q, 1.5*m.median)
+	high = (float64(highest) + 0.5) * q
 	if lowest == 0 {
 		return -0.5 * q, high
 	}

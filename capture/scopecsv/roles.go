@@ -32,7 +32,7 @@ func (a *assembly) assignColumns(numeric []bool) error {
 		a.role[c] = channel
 		h := &a.heads.col[c]
 		switch {
-		case extraWords[strings.ToLower(strings.TrimSpace(h.name))] && a.t.col[c].times == 0:
+		case extraWords[strings.ToLower(strings.TrimSpace(h.name))] && a.t.col[c].times == 0 && a.t.col[c].whole:
 			if a.t.col[c].dates > 0 {
 				a.role[c] = dateRole
 			} else {
