@@ -12,8 +12,9 @@ import (
 // A one-pole high-pass (10 Hz), a delay of whole samples and a sign: the sign
 // comes back for every stimulus that tells it.
 func TestPolarity(t *testing.T) {
-	for _, text := range []string{"pulse length=2s", "pulse width=500us every=1s length=1s", "sweep length=2s", "white-noise length=2s", "pink-noise length=2s",
-		"multitone length=2s", "stepped-tones count=10 each=200ms gap=60ms", "tone length=1s before=0s after=0s fade=0s"} {
+	const ends = " before=200ms after=300ms"
+	for _, text := range []string{"pulse length=1s" + ends, "pulse width=500us every=1s length=1s", "sweep length=1s" + ends, "white-noise length=1s" + ends, "pink-noise length=1s" + ends,
+		"multitone length=1s" + ends, "stepped-tones count=10 each=200ms gap=60ms" + ends, "tone length=1s before=0s after=0s fade=0s"} {
 		s, err := stimulus.Parse(text)
 		if err != nil {
 			t.Fatal(err)

@@ -26,6 +26,7 @@ type spectra struct {
 	X, Y    [][]complex128
 	stepHz  float64
 	stretch float64
+	cut     bool // the signal was there before and goes on after each block
 }
 
 // broadband is the curve of a sweep, noise or pulses.
@@ -93,12 +94,14 @@ func (c *Curve) cover(sh *Shape, sp *spectra, rate float64) {
 // transforms it.
 func transform(out, in *analyze.Signal, sh *Shape) (*spectra, *analyze.Refusal) {
 	n, rate := out.Len(), out.RateHz
-	if sh.Kind == Noise {
-		return steadyBlocks(out, in, sh), nil
-	}
 	// Half a second of silence before, and two after, for the unit to settle.
 	from := max(0, sh.From-int(0.5*rate))
 	to := min(n, sh.To+int(2*rate))
+	// Noise between silences is one long event like a sweep; without them, or
+	// when it is very long, it is cut.
+	if sh.Kind == Noise && (sh.From-from < int(0.02*rate) || to-sh.To < int(0.2*rate) || to-from > noiseBlock) {
+		return steadyBlocks(out, in, sh), nil
+	}
 	if to-from > mostSamples {
 		return nil, &analyze.Refusal{Code: analyze.Unsupported,
 			Text:   fmt.Sprintf("take %q: a %s of %.3g s is longer than the %.3g s that are transformed at once", out.Take.Name, sh.Kind, float64(to-from)/rate, mostSamples/rate),
@@ -131,7 +134,7 @@ func transform(out, in *analyze.Signal, sh *Shape) (*spectra, *analyze.Refusal) 
 func steadyBlocks(out, in *analyze.Signal, sh *Shape) *spectra {
 	n := sh.To - sh.From
 	m := spectrum.FastLength(min(n, noiseBlock))
-	sp := &spectra{stepHz: out.RateHz / float64(m), stretch: 1}
+	sp := &spectra{stepHz: out.RateHz / float64(m), stretch: 1, cut: true}
 	whole := spectrum.NewWhole(m)
 	buf := make([]float64, m)
 	for at := sh.From; at+m <= sh.To && len(sp.X) < 16; at += m {
@@ -163,7 +166,7 @@ func center(x []float64) {
 // quiet is the noise of the input channel in its silence before or after the
 // stimulus, mean |N|^2 of a line at a frequency; nil when there is none.
 func quiet(in *analyze.Signal, sh *Shape, sp *spectra) func(hz float64) float64 {
-	if sh.Kind == Noise {
+	if sp.cut {
 		return nil
 	}
 	margin := int(0.02 * in.RateHz)
@@ -194,7 +197,9 @@ func (sp *spectra) point(hz float64, sh *Shape, noise func(float64) float64) Poi
 	// independent lines at least.
 	half := math.Max(hz*(math.Pow(2, 1.0/gridOctave)-1), 8*sp.stepHz*sp.stretch)
 	if sh.Kind == Noise {
-		half = math.Max(half, 12*sp.stepHz)
+		half = math.Max(half, 12*sp.stepHz*sp.stretch)
+	}
+	if sp.cut {
 		g.edges = 2
 	}
 	if sh.Kind == Sweep && sh.Law.L != 0 {

@@ -88,7 +88,7 @@ func (e *envelope) near(i int) float64 {
 // kept between 2 % and 10 % of the peak, so that hum and noise in the pauses
 // do not join steps. threshold is that level.
 func (e *envelope) sounding(n int) (runs [][2]int, threshold float64) {
-	if e.top == 0 {
+	if e.top <= 1e-9*math.Abs(e.mean) { // constant, up to rounding
 		return nil, 0
 	}
 	sorted := append([]float64(nil), e.peak...)
@@ -204,8 +204,12 @@ func shapeOf(s *analyze.Signal) *Shape {
 	return sh
 }
 
-// steady finds the one tone that holds over seven tenths of the power of a
-// stretch at its start, middle and end alike.
+// tonalShare of the power in one line makes a tone; the low tone of a 4:1
+// pair holds 94 %.
+const tonalShare = 0.96
+
+// steady finds the one tone that holds nearly all of the power of a stretch
+// at its start, middle and end alike.
 func steady(s *analyze.Signal, from, to int, mean float64) (hz float64, ok bool) {
 	n := to - from
 	mid, ok := pitch(s, from+n/5, to-n/10, mean)
@@ -221,8 +225,8 @@ func steady(s *analyze.Signal, from, to int, mean float64) (hz float64, ok bool)
 }
 
 // pitch is the frequency of the strongest line in the first part of a
-// stretch; ok: it holds over seven tenths of the power. Low tones are looked
-// at through averages of samples.
+// stretch; ok: it is a tone. Low tones are looked at through averages of
+// samples.
 func pitch(s *analyze.Signal, from, to int, mean float64) (hz float64, ok bool) {
 	const size = 4096
 	for by := 1; ; by *= 8 {
@@ -239,12 +243,15 @@ func pitch(s *analyze.Signal, from, to int, mean float64) (hz float64, ok bool) 
 			return 0, false
 		}
 		y := x[:n]
+		all, kept := 0.0, 0.0 // power before and after averaging
 		for i := range y {
 			sum := 0.0
 			for _, v := range x[i*by : i*by+by] {
 				sum += v
+				all += (v - mean) * (v - mean)
 			}
 			y[i] = sum/float64(by) - mean
+			kept += y[i] * y[i] * float64(by)
 		}
 		rate := s.RateHz / float64(by)
 		d := spectrum.Welch(slice(y), n, rate, spectrum.BlackmanHarris(n), n, n)
@@ -264,7 +271,7 @@ func pitch(s *analyze.Signal, from, to int, mean float64) (hz float64, ok bool) 
 			line += d.S[k]
 			at += d.S[k] * float64(k)
 		}
-		return at / line * d.StepHz, line > 0.7*(total+d.S[0])
+		return at / line * d.StepHz, line*kept > tonalShare*(total+d.S[0])*all
 	}
 }
 

@@ -107,7 +107,7 @@ func worst(c *Curve, h func(float64) complex128) (db, deg, chi float64) {
 	u := c.Used()
 	ideal := &Curve{Kind: c.Kind}
 	for _, q := range u {
-		ideal.Points = append(ideal.Points, Point{Hz: q.Hz, H: q.H / h(q.Hz), Used: true, U: 1e-3})
+		ideal.Points = append(ideal.Points, Point{Hz: q.Hz, H: q.H / h(q.Hz), Used: true, U: q.U})
 	}
 	ideal.delay()
 	for _, q := range u {
