@@ -96,7 +96,6 @@ func WaveformFigure(s *analyze.Signal, seconds float64) analyze.Figure {
 		}
 	} else {
 		series.Kind = analyze.Envelope
-		fig.Caption += "; drawn as the envelope (smallest to largest sample a column)"
 		for c := 0; c < figurePoints; c++ {
 			a, b := c*len(y)/figurePoints, (c+1)*len(y)/figurePoints
 			lo, hi := y[a], y[a]

@@ -35,7 +35,8 @@ type Line struct {
 	Parts []complex128
 	// weak: the order does not show in the survey; a slower copy of the signal
 	// serves to read it (see slow.go).
-	weak bool
+	weak  bool
+	found []complex128 // phasors read on that copy, by block
 	// Dropped: the line coincides with one of the tone and was not fitted.
 	Dropped bool
 	track   *sinefit.Track

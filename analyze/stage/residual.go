@@ -34,7 +34,7 @@ func (l *Lines) residual(v *Survey) *spectrum.Density {
 	w := spectrum.BlackmanHarris(m)
 	power, count, next := 0.0, 0, 0
 	r := l.newRemover(l.standing(v, float64(w.NENBW)*s.RateHz/float64(m)))
-	low := l.newSlow()
+	low := l.newSlow(r.lines)
 	src := func(dst []float64, at int) int {
 		k := s.Read(dst, at)
 		r.take(dst[:k], at)

@@ -36,10 +36,14 @@ type slow struct {
 	next   int // next output index; output j stands at sample j*ratio
 	block  int
 	solver *sinefit.Solver
+	// base holds, of lines that were taken off, the mean of what was over each
+	// block: what is found adds to it.
+	base map[*Line][]complex128
 }
 
-// newSlow returns nil where the slower copy does not pay.
-func (l *Lines) newSlow() *slow {
+// newSlow returns nil where the slower copy does not pay. removed lists the
+// lines that will have been taken off.
+func (l *Lines) newSlow(removed []*Line) *slow {
 	var lines []*Line
 	weak := 0
 	top := 0.0
@@ -57,7 +61,17 @@ func (l *Lines) newSlow() *slow {
 	if weak == 0 {
 		return nil
 	}
-	s := &slow{l: l, lines: lines, ratio: int(l.Sig.RateHz / (3 * top))}
+	s := &slow{l: l, lines: lines, base: map[*Line][]complex128{}, ratio: int(l.Sig.RateHz / (3 * top))}
+	for _, q := range removed {
+		if !l.isMains(q) {
+			continue
+		}
+		for _, b := range l.Blocks {
+			// Straight from middle to middle.
+			mean := l.between(q.Blocks, float64(b.From)) + 2*l.between(q.Blocks, b.Middle()) + l.between(q.Blocks, float64(b.To))
+			s.base[q] = append(s.base[q], mean/4)
+		}
+	}
 	// Kaiser 1974: transition from top to rate/ratio - top, slowStop deep.
 	nu := top / l.Sig.RateHz
 	wide := 1/float64(s.ratio) - 2*nu
@@ -136,7 +150,15 @@ func (s *slow) finish() {
 		s.fit()
 	}
 	for _, q := range s.lines {
+		q.Blocks, q.found = q.found, nil
 		s.l.mean(q)
+	}
+}
+
+// keep leaves the block as the first fit has read it.
+func (s *slow) keep() {
+	for _, q := range s.lines {
+		q.found = append(q.found, q.Blocks[len(q.found)])
 	}
 }
 
@@ -161,6 +183,7 @@ func (s *slow) fit() {
 		if changed {
 			sv, err := sinefit.NewSolver(nu, n)
 			if err != nil {
+				s.keep()
 				return
 			}
 			s.solver = sv
@@ -168,8 +191,14 @@ func (s *slow) fit() {
 		f := s.solver.Block(y)
 		for i, q := range s.lines {
 			turn := q.track.OrderTurns(float64(q.Order), place)
-			q.Blocks[m] += f.Z[i] * sinefit.Phasor(-turn) / complex(s.gain(nu[i]/float64(s.ratio)), 0)
+			q.found = append(q.found, f.Z[i]*sinefit.Phasor(-turn)/complex(s.gain(nu[i]/float64(s.ratio)), 0))
+			if b := s.base[q]; b != nil {
+				q.found[m] += b[m]
+			}
 		}
+	}
+	if n <= 2*len(s.lines)+1 {
+		s.keep()
 	}
 	// Keep what the next block needs.
 	if keep := min(to, s.next) - 1; keep > s.first {
