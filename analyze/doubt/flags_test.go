@@ -60,6 +60,10 @@ var doubtful = []struct {
 	{"a limiter breathes by 0.6 dB", func() Subject {
 		return audio(shaped(noisyTone(16000, 8, 997, 3), func(t float64) float64 { return 1 + 0.035*math.Sin(2*math.Pi*t/5) }))
 	}, riding1},
+	{"automatic gain while a clock wanders", func() Subject {
+		s := silent(16000, 8).Swing(1042, 0.3, func(t float64) float64 { return 0.01 * math.Sin(2*math.Pi*t/7) })
+		return audio(shaped(s, func(t float64) float64 { return 1 - 0.2*math.Exp(-t/2) }).Noise(1e-5, 80))
+	}, riding1},
 	{"gain drifts within a burst", func() Subject {
 		s := shaped(burst(16000), func(t float64) float64 { return 1 - 0.1*(t-3)/3 })
 		return audio(s.Noise(1e-5, 4))
@@ -275,6 +279,10 @@ var healthy = []struct {
 	{"tone near the mains", func() Subject {
 		return audio(silent(16000, 10).Tone(47, 0.2, 0).Mains(50.02, 0.01, []float64{0.02, 0.001, 0.005}, 9).Noise(1e-5, 25))
 	}},
+	{"a tone 1 Hz from strong hum", func() Subject {
+		return nominal(audio(silent(8000, 6).Tone(51, 0.3, 0).Mains(50, 0, []float64{0.02}, 2).Noise(1e-5, 3)), 51)
+	}},
+	{"a tone 0.3 Hz from a line", func() Subject { return audio(silent(8000, 12).Tone(400, 0.3, 0).Tone(400.3, 0.015, 1).Noise(1e-5, 3)) }},
 	{"a weak tone in strong hum", func() Subject {
 		return audio(silent(16000, 10).Tone(137, 1e-4, 0).Mains(50.02, 0.02, []float64{0.02, 0.001, 0.005}, 10).Noise(1e-5, 26))
 	}},

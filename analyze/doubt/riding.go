@@ -92,9 +92,62 @@ func (l *listening) drifts(t stretch) (Finding, bool) {
 	if lo <= 0 || 20*math.Log10(hi/lo) < ridingDB || jump > 0.6*(hi-lo) || fast-slow > 0.5 {
 		return Finding{}, false
 	}
+	// A line so near that no spectrum parts it beats with the tone, and moves
+	// its phase (in rad) as much as its level. Gain leaves the phase alone.
+	if f.turning(t) > 0.3*relative(levels) {
+		return Finding{}, false
+	}
 	return l.found(recording.GainRiding, t.from*f.n, t.to*f.n,
 		fmt.Sprintf("the tone at %.6g Hz drifts by %.2f dB between %.4g s and %.4g s: something changes the gain, or the source is not steady; switch processing off in the driver",
 			f.hz, 20*math.Log10(hi/lo), l.at(t.from*f.n), l.at(t.to*f.n))), true
+}
+
+// turning is the RMS in rad of the tone's phase over a stretch about a
+// parabola, which a frequency off the true one and a slow drift of it draw.
+func (f *frames) turning(t stretch) float64 {
+	n := t.len()
+	phase := make([]float64, n)
+	for i := 1; i < n; i++ {
+		phase[i] = phase[i-1] + cmplx.Phase(f.list[t.from+i].z*cmplx.Conj(f.list[t.from+i-1].z))
+	}
+	// Orthogonal polynomials of order 0, 1, 2 over evenly spaced places.
+	for order := range 3 {
+		var over, under float64
+		p := func(i int) float64 {
+			x := float64(2*i-n+1) / float64(n)
+			switch order {
+			case 0:
+				return 1
+			case 1:
+				return x
+			}
+			return x*x - (1-1/float64(n*n))/3
+		}
+		for i, v := range phase {
+			over += v * p(i)
+			under += p(i) * p(i)
+		}
+		for i := range phase {
+			phase[i] -= over / under * p(i)
+		}
+	}
+	sum := 0.0
+	for _, v := range phase {
+		sum += v * v / float64(n)
+	}
+	return math.Sqrt(sum)
+}
+
+// relative is the scatter of x about its mean, over the mean.
+func relative(x []float64) float64 {
+	mean, square := 0.0, 0.0
+	for _, v := range x {
+		mean += v / float64(len(x))
+	}
+	for _, v := range x {
+		square += (v - mean) * (v - mean) / float64(len(x))
+	}
+	return math.Sqrt(square) / mean
 }
 
 // beats: another line stands so near the tone, and so strong, that their
