@@ -132,7 +132,8 @@ limits of a job file, and writes a slip to attach to a ticket.`,
 		return usagef("%s: %s; see %s --help", words(cmd), flagFault(cmd, err), cmd.CommandPath())
 	})
 	root.SetHelpFunc(func(cmd *cobra.Command, _ []string) { a.help(cmd) })
-	root.AddCommand(a.runCommand(), a.lookCommand(), a.measureCommand(), a.demoCommand(),
+	root.AddCommand(a.runCommand(), a.lookCommand(), a.measureCommand(),
+		a.planCommand(), a.stimulusCommand(), a.demoCommand(),
 		a.completionCommand(), a.versionCommand())
 	root.SetHelpCommand(a.helpCommand())
 	root.InitDefaultHelpCmd()

@@ -41,8 +41,9 @@ var stages = map[string][]string{
 	"analyze/measures": {"*"},
 	"analyze/run":      {"*"},
 	"analyze/look":     {"analyze/intake"},
+	"analyze/plan":     {"analyze/job"}, // plans what a job names
 	"report/renderers": {"*"},
-	"report/html":      {"report/figure"},
+	"report/html":      {"report/figure", "report/text"},
 	"report/pdf":       {"report/figure"},
 	"report/markdown":  {"report/figure"},
 }
