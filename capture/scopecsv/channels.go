@@ -182,7 +182,7 @@ func (a *assembly) listMissing() {
 		if len(k.lost) > 1 {
 			more = fmt.Sprintf(", in %d places", len(k.lost))
 		}
-		a.flag(recording.Overrange, i+1, from, to, "%s of %d have no value (%s, first in line %d%s)", plural(n, "sample"), a.t.n, first.why, first.line, more)
+		a.flag(recording.Overrange, i+1, from, to, "%s of %d without a value (%s, first in line %d%s)", plural(n, "sample"), a.t.n, first.why, first.line, more)
 	}
 	sort.Ints(a.joints)
 	at := -1

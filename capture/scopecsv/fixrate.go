@@ -252,7 +252,7 @@ func (a *assembly) flagColumn(m timing) {
 	}
 	for i, b := range m.breaks {
 		a.breakAt(b)
-		if i >= maxPlaces {
+		if i >= maxPlaces || m.scattered {
 			continue
 		}
 		from, to := a.place(b-1, b)

@@ -337,7 +337,7 @@ func (f *file) isNames(lay *layout, cells []string, numeric []bool, units, marke
 				return false
 			}
 		}
-		known = known || readHeader(t).q != unknown || timeWord(t)
+		known = known || readHeader(t).q != unknown || timeWord(t) || indexWord(t) || channelName(t)
 		first = false
 	}
 	if filled == 0 || marker && !known {

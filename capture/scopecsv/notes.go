@@ -71,7 +71,7 @@ func (a *assembly) readPair(r row) {
 		}
 	}
 	if key, value := keyValue(r.text, 0); value != "" {
-		if i := strings.IndexAny(value, ",;\t"); i > 0 && strings.IndexAny(value[i+1:], ",;\t") >= 0 {
+		if i := strings.IndexAny(value, ",;\t"); i > 0 && strings.ContainsAny(value[i+1:], ",;\t") {
 			value = value[:i] // several cells under another separator
 		}
 		a.takePair(key, []string{value}, r.line)

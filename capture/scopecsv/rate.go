@@ -8,21 +8,22 @@ import (
 
 // timing is what the time column says about the sampling.
 type timing struct {
-	step     float64 // s a sample, least-squares slope of time on row over the whole record, breaks left out
-	bound    float64 // bound of its error from the rounding of the stamps, s
-	median   float64 // median step, s
-	noise    float64 // float64's own rounding of the largest stamp, s
-	q        float64 // worth of the last digit of the coarsest stamp, s
-	breaks   []int   // rows that follow a gap or restart
-	repeats  int     // steps of zero
-	repeatAt int
-	worst    float64 // largest distance of a stamp from the line, s
-	rms      float64
-	worstAt  int
-	pairs    bool // every stamp stands exactly twice
-	even     bool // all stamps lie on the line within their rounding
-	single   bool // stamps are 32-bit floats printed with more digits
-	usable   bool // near enough to the line that the slope is a sample rate
+	step      float64 // s a sample, least-squares slope of time on row over the whole record, breaks left out
+	bound     float64 // bound of its error from the rounding of the stamps, s
+	median    float64 // median step, s
+	noise     float64 // float64's own rounding of the largest stamp, s
+	q         float64 // worth of the last digit of the coarsest stamp, s
+	breaks    []int   // rows that follow a gap or restart
+	repeats   int     // steps of zero
+	repeatAt  int
+	worst     float64 // largest distance of a stamp from the line, s
+	rms       float64
+	worstAt   int
+	pairs     bool // every stamp stands exactly twice
+	even      bool // all stamps lie on the line within their rounding
+	single    bool // stamps are 32-bit floats printed with more digits
+	scattered bool // over a twentieth of the steps are breaks: no stretches to speak of
+	usable    bool // near enough to the line that the slope is a sample rate
 }
 
 func pow10(e int) float64 {
@@ -332,7 +333,7 @@ func (m *timing) residuals(t []float64, unit func(float64) float64) {
 	}
 	m.rms = math.Sqrt(sum / float64(max(1, count)))
 	if len(m.breaks) > max(2, len(t)/20) {
-		m.usable, m.even = false, false
+		m.usable, m.even, m.scattered = false, false, true
 	}
 }
 

@@ -1,6 +1,7 @@
 package scopecsv
 
 import (
+	"math"
 	"strings"
 
 	"benchslip/capture/num"
@@ -152,9 +153,13 @@ func (st style) stated(value, unit string) (figure, bool) {
 		fig.q, factor = q, f
 	}
 	fig.v = d.V * factor
-	fig.half = 0.5 * pow10(d.Last) * factor
+	fig.half = math.Min(0.5*pow10(d.Last)*factor, maxRounding*math.Abs(fig.v))
 	return fig, fig.v == fig.v && fig.v < overrange && fig.v > -overrange
 }
+
+// maxRounding is the largest relative error that a stated figure's few digits
+// excuse: "1" is not taken for a rounded 0.59.
+const maxRounding = 2e-3
 
 // rateUnit reads the unit of a stated figure: of time, of rate, or a prefix.
 func rateUnit(w string) (quantity, float64, bool) {

@@ -231,6 +231,7 @@ ok("float32-stamps", "Time,CH1\n" + rows(["%.12f" % __import__("struct").unpack(
 gapt = [i * 1e-4 + (3.0 if i >= 150 else 0) for i in range(M)]
 ok("gap-of-seconds", "Time,CH1\n" + rows(f(gapt, 4), m), 1e4, [CM], frames=M, flags=["gap"], joints=[150])
 ok("stated-one-rows-other", "Sample Interval,1.0\nTime,CH1\n" + rows(f([i * 0.59 for i in range(M)], 2), m), 1 / 0.59, [CM], frames=M, flags=["rate-doubt"])
+ok("stated-one-digit-rows-other", "Sample Interval,1\nTime,CH1\n" + rows(f([i * 0.59 for i in range(M)], 2), m), 1 / 0.59, [CM], frames=M, flags=["rate-doubt"])
 bad("header-s-values-ms", "Sample Rate,10000\nTime (s),CH1 (V)\n" + rows(f([i * 0.1 for i in range(M)], 1), m), 2, "wrong unit")
 pairs = ["%.6f" % ((i // 2) * 1e-3) for i in range(M)]
 ok("stamps-twice", "Time,CH1\n" + rows(pairs, m), None, [CM], frames=M, flags=["duplicate-time", "rate-doubt"])
