@@ -312,5 +312,6 @@ func channelName(t string) bool {
 			return true
 		}
 	}
-	return channelWord(strings.Fields(strings.NewReplacer("_", " ", "-", " ").Replace(w))[0]) && w != "a"
+	parts := strings.Fields(strings.NewReplacer("_", " ", "-", " ").Replace(w))
+	return len(parts) > 0 && channelWord(parts[0]) && w != "a"
 }
