@@ -29,29 +29,29 @@ func runClipSymmetry(p *analyze.Pass) analyze.Result {
 		return analyze.RefuseWith(percent, bad)
 	}
 	s := h.Out
-	f, ok := flatsOf(h)
+	f, ok := stage.FlatsOf(h)
 	r := analyze.Result{Unit: percent, FullScaleSine: s.FullScaleSine()}
 	r.Figures = []analyze.Figure{stage.ToneWaveform(s, h.Tone.Hz), stage.SpectrumFigure(p, h.Lo)}
 	r.Details = map[string]any{"fundamental": map[string]any{"frequency_hz": h.Tone.Hz, "rms_v": h.Lo.Fundamental().RMS()},
 		"span_s": []float64{s.StartS, s.StartS + s.DurationS()}}
 	if ok {
-		for k, v := range f.details(s) {
+		for k, v := range details(f, s) {
 			r.Details[k] = v
 		}
 	}
-	if !ok || !f.up && !f.down {
+	if !ok || !f.Any() {
 		r.Refusal = &analyze.Refusal{Code: analyze.NotEnoughPoints,
 			Text:   fmt.Sprintf("take %q, channel %d: neither half of the wave is flat", s.Take.Name, s.Channel()),
 			Advice: "record at a level at which the output clips by a decibel or more, below the recorder's full scale"}
 		return r
 	}
-	sum := f.positive + f.negative
-	v := (f.positive - f.negative) / sum
+	sum := f.Positive + f.Negative
+	v := (f.Positive - f.Negative) / sum
 	var b budget.Budget
 	// dv = 2 (V- dV+ - V+ dV-)/(V+ + V-)^2; the centre moves both.
-	b.A("positive half", 2*f.negative/(sum*sum)*f.positiveU, 0)
-	b.A("negative half", 2*f.positive/(sum*sum)*f.negativeU, 0)
-	b.A("centre of the sine", 2/sum*f.centreU, 0)
+	b.A("positive half", 2*f.Negative/(sum*sum)*f.PositiveU, 0)
+	b.A("negative half", 2*f.Positive/(sum*sum)*f.NegativeU, 0)
+	b.A("centre of the sine", 2/sum*f.CentreU, 0)
 	r.Value = &v
 	b.Into(&r)
 	first := "the negative half flattens first"
@@ -65,11 +65,11 @@ func runClipSymmetry(p *analyze.Pass) analyze.Result {
 	default:
 		r.Notes = append(r.Notes, first)
 		r.Opinions = append(r.Opinions, fmt.Sprintf("%s, at %.3g against %.3g %s: consistent with one rail low, a bias fault or a dead half of the output stage; "+
-			"to confirm, measure both rails under load and the DC on each stage", first, math.Min(f.positive, f.negative), math.Max(f.positive, f.negative), s.Unit))
+			"to confirm, measure both rails under load and the DC on each stage", first, math.Min(f.Positive, f.Negative), math.Max(f.Positive, f.Negative), s.Unit))
 	}
 	r.Details["flattens_first"] = map[bool]string{true: "negative", false: "positive"}[v > 0]
 	if s.Unit == "V" {
-		text, more := f.opinion(p)
+		text, more := opinion(f, p)
 		for k, d := range more {
 			r.Details[k] = d
 		}

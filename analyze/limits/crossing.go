@@ -4,6 +4,7 @@ import (
 	"math"
 
 	"benchslip/analyze/internal/budget"
+	"benchslip/analyze/stage"
 )
 
 // crossing is where THD+N reaches the limit, between two neighbouring points.
@@ -28,7 +29,7 @@ func (g gathered) crossing(limit float64) (crossing, bool) {
 		t := math.Log(limit/a.thdn) / dy
 		c := crossing{rms: a.rms * math.Exp(t*dx), low: a, high: b, share: t, byLow: -dx * (1 - t) / dy, byHigh: -dx * t / dy}
 		c.spread = 2 * math.Abs(g.curved(i, t)-t) * dx
-		if f, ok := flatsOf(b.heard); ok && (f.up || f.down) {
+		if f, ok := stage.FlatsOf(b.heard); ok && f.Any() {
 			c.spread = math.Max(c.spread, math.Abs(math.Log(hardClip(b, limit)/c.rms)))
 		}
 		c.spread = math.Min(c.spread, dx)

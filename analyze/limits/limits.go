@@ -83,16 +83,12 @@ func gather(p *analyze.Pass) (g gathered, skipped int, bad *analyze.Refusal) {
 	}
 	band := p.Params.BandOr(20, 20000)
 	for _, t := range takes {
-		out, in, bad := signals(p, t)
-		if bad != nil {
-			return g, skipped, bad
-		}
-		search := out
-		if in != nil {
-			search = in
-		}
-		steps := ofOneTone(stage.Steps(p, search), at)
-		if len(steps) == 0 {
+		heard, left, why := oneTone(p, t, at)
+		skipped += left
+		if len(heard)+left < 2 {
+			if why != nil && left == 0 {
+				return g, skipped, why
+			}
 			h, bad := stage.ListenAt(p, t, "take", at, 0)
 			if bad != nil {
 				return g, skipped, bad
@@ -105,28 +101,18 @@ func gather(p *analyze.Pass) (g gathered, skipped int, bad *analyze.Refusal) {
 			continue
 		}
 		g.stepped = true
-		var last *analyze.Refusal
 		read := 0
-		for _, s := range steps {
-			var i *analyze.Signal
-			if in != nil {
-				i = in.Part(s.From, s.To)
-			}
-			h, bad := stage.Hear(p, out.Part(s.From, s.To), i, s.Hz, 0)
-			var q point
-			if bad == nil {
-				q, bad = pointOf(h, band)
-			}
+		for _, h := range heard {
+			q, bad := pointOf(h, band)
 			if bad != nil {
-				last = bad
-				skipped++
+				skipped, why = skipped+1, bad
 				continue
 			}
 			read++
 			g.points = append(g.points, q)
 		}
 		if read == 0 {
-			return g, skipped, last
+			return g, skipped, why
 		}
 	}
 	slices.SortStableFunc(g.points, func(a, b point) int {
@@ -144,37 +130,21 @@ func gather(p *analyze.Pass) (g gathered, skipped int, bad *analyze.Refusal) {
 	return g, skipped, nil
 }
 
-func signals(p *analyze.Pass, t *analyze.Take) (out, in *analyze.Signal, bad *analyze.Refusal) {
-	if out, bad = p.SignalOf(t, "take", "out"); bad != nil {
-		return nil, nil, bad
-	}
-	if p.Wiring(t).In != "" {
-		in, bad = p.SignalOf(t, "take", "in")
-	}
-	return out, in, bad
-}
-
-// ofOneTone keeps the steps of one frequency: that of `at`, else of the
-// strongest. Fewer than two are no steps.
-func ofOneTone(all []stage.Step, at float64) []stage.Step {
+// oneTone hears the steps of one frequency: that of `at`, else of the
+// strongest.
+func oneTone(p *analyze.Pass, t *analyze.Take, at float64) ([]*stage.Heard, int, *analyze.Refusal) {
 	if at == 0 {
 		top := 0.0
-		for _, q := range all {
+		if _, _, why := stage.HearSteps(p, t, "take", 0, func(q stage.Step) bool {
 			if q.RMS > top {
 				top, at = q.RMS, q.Hz
 			}
+			return false
+		}); why != nil {
+			return nil, 0, why
 		}
 	}
-	var out []stage.Step
-	for _, q := range all {
-		if math.Abs(math.Log2(q.Hz/at)) <= 1.0/24 {
-			out = append(out, q)
-		}
-	}
-	if len(out) < 2 {
-		return nil
-	}
-	return out
+	return stage.HearSteps(p, t, "take", 0, func(q stage.Step) bool { return math.Abs(math.Log2(q.Hz/at)) <= 1.0/24 })
 }
 
 // list is details.points.

@@ -202,3 +202,38 @@ func StepFor(s *analyze.Signal, all []Step, atHz float64) (Step, *analyze.Refusa
 	}
 	return all[best], nil
 }
+
+// HearSteps hears the steps of a stepped take that keep allows, in order of
+// time; nil for a take that is not stepped. Steps in which no tone can be
+// heard are left out and counted, why says the last one's reason.
+func HearSteps(p *analyze.Pass, t *analyze.Take, role string, orders int, keep func(Step) bool) (heard []*Heard, skipped int, why *analyze.Refusal) {
+	out, bad := p.SignalOf(t, role, "out")
+	if bad != nil {
+		return nil, 0, bad
+	}
+	search, in := out, (*analyze.Signal)(nil)
+	if p.Wiring(t).In != "" {
+		if in, bad = p.SignalOf(t, role, "in"); bad != nil {
+			return nil, 0, bad
+		}
+		search = in
+	}
+	all := Steps(p, search)
+	for _, q := range all {
+		if !keep(q) {
+			continue
+		}
+		var i *analyze.Signal
+		if in != nil {
+			i = in.Part(q.From, q.To)
+		}
+		h, bad := Hear(p, out.Part(q.From, q.To), i, q.Hz, orders)
+		if bad != nil {
+			skipped, why = skipped+1, bad
+			continue
+		}
+		h.Steps = len(all)
+		heard = append(heard, h)
+	}
+	return heard, skipped, why
+}

@@ -104,6 +104,10 @@ func runTHD(p *analyze.Pass) analyze.Result {
 	if p.Params.Reference == "" {
 		r.Details["reference"] = "fundamental"
 	}
+	overSteps(p, h, &r)
+	if s.seen {
+		r.Opinions = append(r.Opinions, clipping(h, math.Sqrt(math.Max(s.P, 0)/p1))...)
+	}
 	if !s.seen {
 		r.Value, r.Budget = nil, nil
 		bound, ok := budget.UpperBoundOf(s.read, s.shares, 0.95)
@@ -303,6 +307,8 @@ func runResidual(p *analyze.Pass, inverse bool) analyze.Result {
 		r.Details["lower_edge_resolved"] = false
 		r.Notes = append(r.Notes, "the span is too short for the lower band edge: everything but DC up to the upper edge counts")
 	}
+	overSteps(p, h, &r)
+	r.Opinions = append(r.Opinions, clipping(h, math.Sqrt(math.Max(rest.P, 0)/total))...)
 	if r.Value == nil {
 		setBound(&r, math.Sqrt(2*rest.U/total), analyze.BelowDetection, "nothing is left beside the tone", "none needed")
 		if inverse {

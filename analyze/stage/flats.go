@@ -1,25 +1,24 @@
-package limits
+package stage
 
 import (
-	"fmt"
 	"math"
 	"slices"
-
-	"benchslip/analyze"
-	"benchslip/analyze/stage"
 )
 
-// flats is where the two halves of a wave flatten, in the signal's unit, both
+// Flats is where the two halves of a wave flatten, in the signal's unit, both
 // measured from the centre of the sine that the wave follows between them.
 // What an AC-coupled path does to the mean of a lopsided wave moves that
 // centre with it.
-type flats struct {
-	positive, negative   float64 // of the flat, or the sine's own peak where there is none
-	positiveU, negativeU float64 // standard uncertainty of each
-	centre, centreU      float64
-	peak                 float64 // of the sine
-	up, down             bool    // this half is flat
+type Flats struct {
+	Positive, Negative   float64 // of the flat, or the sine's own peak where there is none
+	PositiveU, NegativeU float64 // standard uncertainty of each
+	Centre, CentreU      float64
+	Peak                 float64 // of the sine
+	Up, Down             bool    // this half is flat
 }
+
+// Any reports whether a half is flat.
+func (f Flats) Any() bool { return f.Up || f.Down }
 
 const (
 	foldSamples = 1 << 21 // samples used at most
@@ -36,7 +35,7 @@ type folded struct {
 	phase, x   []float64 // of every sample
 }
 
-func fold(h *stage.Heard) folded {
+func fold(h *Heard) folded {
 	s := h.Out
 	n := min(s.Len(), foldSamples)
 	f := folded{phase: make([]float64, n), x: make([]float64, n)}
@@ -140,15 +139,15 @@ func solve(m [3][4]float64) (x, inv [3]float64, ok bool) {
 	return x, inv, true
 }
 
-// flatsOf finds the flats of a heard tone. ok is false where no sine can be
+// FlatsOf finds the flats of a heard tone. ok is false where no sine can be
 // fitted beside them.
-func flatsOf(h *stage.Heard) (flats, bool) {
+func FlatsOf(h *Heard) (Flats, bool) {
 	f := fold(h)
 	lo, hi := slices.Min(f.y), slices.Max(f.y)
 	mid, half := (lo+hi)/2, (hi-lo)/2
 	s, ok := f.fitSine(func(i int) bool { return math.Abs(f.y[i]-mid) < 0.5*half })
 	if !ok || s.peak() == 0 {
-		return flats{}, false
+		return Flats{}, false
 	}
 	for range 12 {
 		m := knee * s.peak()
@@ -162,16 +161,16 @@ func flatsOf(h *stage.Heard) (flats, bool) {
 		s = next
 		hi, lo = f.level(s, hi, +1), f.level(s, lo, -1)
 	}
-	out := flats{centre: s.c, peak: s.peak(), centreU: s.sigma * math.Sqrt(s.inv[0])}
+	out := Flats{Centre: s.c, Peak: s.peak(), CentreU: s.sigma * math.Sqrt(s.inv[0])}
 	peakU := s.sigma * math.Sqrt(math.Max(s.inv[1], s.inv[2]))
 	step := h.Out.Step
-	out.positive, out.positiveU, out.up = f.flat(s, hi, +1, step)
-	out.negative, out.negativeU, out.down = f.flat(s, lo, -1, step)
-	if !out.up {
-		out.positive, out.positiveU = out.peak, peakU
+	out.Positive, out.PositiveU, out.Up = f.flat(s, hi, +1, step)
+	out.Negative, out.NegativeU, out.Down = f.flat(s, lo, -1, step)
+	if !out.Up {
+		out.Positive, out.PositiveU = out.Peak, peakU
 	}
-	if !out.down {
-		out.negative, out.negativeU = out.peak, peakU
+	if !out.Down {
+		out.Negative, out.NegativeU = out.Peak, peakU
 	}
 	return out, true
 }
@@ -266,90 +265,4 @@ func median(x []float64) float64 {
 	slices.Sort(x)
 	n := len(x)
 	return (x[(n-1)/2] + x[n/2]) / 2
-}
-
-// words says how one half ends.
-func words(flat bool) string {
-	if flat {
-		return "flat"
-	}
-	return "not flat"
-}
-
-func (f flats) details(s *analyze.Signal) map[string]any {
-	suffix := "_v"
-	if s.Unit == "FS" {
-		suffix = "_fs"
-	}
-	return map[string]any{"positive" + suffix: f.positive, "negative" + suffix: f.negative, "sine_peak" + suffix: f.peak, "centre" + suffix: f.centre,
-		"positive_half": words(f.up), "negative_half": words(f.down)}
-}
-
-// opinion says what may flatten the wave at these volts, from the rails and
-// the load stated.
-func (f flats) opinion(p *analyze.Pass) (text string, details map[string]any) {
-	if p.Params.Rails == nil || !f.up && !f.down {
-		return "", nil
-	}
-	rail := math.Abs(p.Params.Rails.Value.Linear())
-	peak := math.Max(f.positive, f.negative)
-	if f.up != f.down { // the half that is flat
-		peak = map[bool]float64{true: f.positive, false: f.negative}[f.up]
-	}
-	room := rail - peak
-	details = map[string]any{"headroom_v": room}
-	if room < math.Max(4, 0.25*rail) {
-		return fmt.Sprintf("the output flattens at %.3g V peak, %.2g V inside rails of %.3g V: consistent with the rails as the limit (stages stop 1 to 4 V short, common practice); "+
-			"to confirm, measure again with a lighter load: the voltage stays", peak, math.Max(room, 0), rail), details
-	}
-	if p.Params.Load == nil {
-		return fmt.Sprintf("the output flattens at %.3g V peak, %.3g V inside rails of %.3g V: consistent with a current limit, or with a stage before it that clips; "+
-			"to confirm, state `load` and measure again with a lighter one", peak, room, rail), details
-	}
-	load := p.Params.Load.Value.Linear()
-	details["current_a"] = peak / load
-	return fmt.Sprintf("the output flattens at %.3g V peak, %.3g V inside rails of %.3g V; into %.3g ohm that is %.3g A: consistent with a current limit there; "+
-		"to confirm, measure again with a lighter load: a current limit lets the voltage rise, a stage before it that clips does not", peak, room, rail, load, peak/load), details
-}
-
-// withinRails refuses a result whose wave swings further than the stated rails
-// allow: the volts must be wrong then. Half of peak to peak is compared, which
-// a blocked DC does not change.
-func withinRails(p *analyze.Pass, h *stage.Heard, f flats, r analyze.Result) analyze.Result {
-	if p.Params.Rails == nil || h.Out.Unit != "V" {
-		return r
-	}
-	rail, swing := math.Abs(p.Params.Rails.Value.Linear()), (f.positive+f.negative)/2
-	if swing <= rail*1.02 {
-		return r
-	}
-	bad := analyze.Refuse(r.Unit, analyze.Impossible, fmt.Sprintf("the output would swing %.4g V peak past rails of %.4g V", swing, rail),
-		"check full_scale_peak or the probe factor of the gear")
-	bad.Details, bad.Figures = r.Details, r.Figures
-	return bad
-}
-
-// explain adds to a result of points what the wave of the highest one shows.
-func explain(p *analyze.Pass, r analyze.Result, g gathered, limit float64) analyze.Result {
-	top := g.points[len(g.points)-1]
-	f, ok := flatsOf(top.heard)
-	if !ok || top.heard.Out.Unit != "V" {
-		return r
-	}
-	if r = withinRails(p, top.heard, f, r); r.Refusal != nil && r.Refusal.Code == analyze.Impossible {
-		return r
-	}
-	if top.thdn < limit || !f.up && !f.down {
-		return r
-	}
-	clip := f.details(top.heard.Out)
-	text, more := f.opinion(p)
-	for k, v := range more {
-		clip[k] = v
-	}
-	r.Details["clip"] = clip
-	if text != "" {
-		r.Opinions = append(r.Opinions, text)
-	}
-	return r
 }
