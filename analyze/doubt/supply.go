@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 
+	"benchslip/analyze/internal/spectrum"
 	"benchslip/analyze/stage"
 	"benchslip/capture/recording"
 )
@@ -33,13 +34,30 @@ func supply(l *listening) []Finding {
 			continue
 		}
 		orders, power, at := l.comb(hz, tone, l.MainsHz)
-		if orders < leastOrders || power < stronger*own {
+		if orders < leastOrders || power < stronger*own || l.pair(at) {
 			continue
 		}
 		return []Finding{l.found(recording.MainsUnlike, 0, l.sig.Len(),
 			fmt.Sprintf("%d harmonics of %.4g Hz stand out of the noise, and little or none of the job's %.4g Hz: set [mains] frequency, or check the take", orders, at, l.MainsHz))}
 	}
 	return nil
+}
+
+// pair: the line at hz is the low tone of a tone pair, 60 Hz of the modulation
+// method of IEC 60268-3: another line that is none of its multiples stands
+// between 20 dB under it and its own level.
+func (l *listening) pair(hz float64) bool {
+	v := l.survey
+	tol := v.ToleranceHz()
+	low, ok := v.StrongestIn(hz-tol-4e-4*hz, hz+tol+4e-4*hz, nil)
+	if !ok {
+		return false
+	}
+	_, two := v.StrongestIn(5*hz, l.sig.RateHz/2, func(q spectrum.Peak) bool {
+		off := math.Abs(q.Hz - hz*math.Round(q.Hz/hz))
+		return q.Power > low.Power/100 && (off > tol+4e-4*q.Hz || q.Hz > combOrders*hz)
+	})
+	return two
 }
 
 // comb counts the peaks on multiples of a supply within 1 % of hz, those of
