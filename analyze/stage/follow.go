@@ -98,9 +98,10 @@ func newFollowed(p *analyze.Pass, s *analyze.Signal, toneHz float64, weak bool) 
 	}
 	start := append([]sinefit.Comb(nil), combs...)
 	estimates := make([][]sinefit.Estimate, len(combs))
-	nus := make([]float64, 0, len(f.Blocks))
-	u2s := make([]float64, 0, len(f.Blocks))
-	at := make([]float64, 0, len(f.Blocks))
+	var mains *walk
+	if mainsAt >= 0 {
+		mains = newWalk(combs[mainsAt].Orders, f.MainsHz, v)
+	}
 	var buf []float64
 	for _, b := range f.Blocks {
 		n := b.To - b.From
@@ -108,6 +109,10 @@ func newFollowed(p *analyze.Pass, s *analyze.Signal, toneHz float64, weak bool) 
 			buf = make([]float64, n)
 		}
 		y := buf[:s.Read(buf[:n], b.From)]
+		expected := 0.0
+		if mainsAt >= 0 {
+			expected = start[mainsAt].Nu
+		}
 		// Start where the block before ended, unless that led astray.
 		r, err := sinefit.Refine(y, start, 0.6/float64(n))
 		if err == nil && toneAt >= 0 && !r.Settled[toneAt] {
@@ -129,14 +134,9 @@ func newFollowed(p *analyze.Pass, s *analyze.Signal, toneHz float64, weak bool) 
 		first := 0
 		for g, c := range combs {
 			if g == mainsAt {
-				weight := 0.0
-				for i, o := range c.Orders {
-					weight += o * o * abs2(r.Z[first+i])
+				if !mains.add(b, r.Nu[g], expected, r.Z[first:first+len(c.Orders)]) {
+					start[g].Nu = expected
 				}
-				nn := float64(n)
-				nus = append(nus, r.Nu[g])
-				u2s = append(u2s, math.Max(24*sigma2/(weight*nn*(nn*nn-1)*4*math.Pi*math.Pi), 1e-32))
-				at = append(at, b.Middle())
 			} else {
 				estimates[g] = append(estimates[g], sinefit.Estimate{At: b.Middle(), N: n, Nu: r.Nu[g], Z: r.Z[first], Sigma2: sigma2})
 			}
@@ -146,9 +146,8 @@ func newFollowed(p *analyze.Pass, s *analyze.Signal, toneHz float64, weak bool) 
 	if toneAt >= 0 {
 		f.Tone = estimates[toneAt]
 	}
-	if mainsAt >= 0 && len(nus) > 0 {
-		smooth, _ := sinefit.SmoothFrequencies(nus, u2s)
-		f.Mains = sinefit.FromFrequencies(s.Len(), at, smooth)
+	if mains != nil && len(mains.nu) > 0 {
+		f.Mains = mains.track(s.Len())
 	}
 	for g := firstOther; g < len(combs); g++ {
 		if len(estimates[g]) > 0 {
