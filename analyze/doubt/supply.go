@@ -45,7 +45,7 @@ func supply(l *listening) []Finding {
 
 // pair: the line at hz is the low tone of a tone pair, 60 Hz of the modulation
 // method of IEC 60268-3: another line that is none of its multiples stands
-// between 20 dB under it and its own level.
+// between 20 dB under it and little over its own level.
 func (l *listening) pair(hz float64) bool {
 	v := l.survey
 	tol := v.ToleranceHz()
@@ -55,7 +55,7 @@ func (l *listening) pair(hz float64) bool {
 	}
 	_, two := v.StrongestIn(5*hz, l.sig.RateHz/2, func(q spectrum.Peak) bool {
 		off := math.Abs(q.Hz - hz*math.Round(q.Hz/hz))
-		return q.Power > low.Power/100 && (off > tol+4e-4*q.Hz || q.Hz > combOrders*hz)
+		return q.Power > low.Power/100 && q.Power < 1.5*low.Power && (off > tol+4e-4*q.Hz || q.Hz > combOrders*hz)
 	})
 	return two
 }
