@@ -17,11 +17,12 @@ import (
 func (p *planner) doubts(t *analyze.Take, uses []use, info *recording.Info, n length, rate float64) []string {
 	var out []string
 	say := func(format string, args ...any) { out = appendNew(out, fmt.Sprintf(format, args...)) }
+	var volts []string // checks that lack them
 	for _, u := range uses {
 		name := u.check.Name
 		w := t.Wiring.Over(u.check.Params.Wiring)
 		if wantsVolts(u) && !hasVolts(t, w.Out) {
-			say("%s: no volts at full scale are known; calibrate, or state full_scale_peak for the gear", name)
+			volts = appendNew(volts, name)
 		}
 		switch {
 		case u.role != "take":
@@ -38,6 +39,9 @@ func (p *planner) doubts(t *analyze.Take, uses []use, info *recording.Info, n le
 		}
 		p.windowDoubts(t, u, say)
 		p.loudDoubts(t, u, say)
+	}
+	if volts != nil {
+		say("no volts at full scale are known; calibrate, or state full_scale_peak for the gear: needed by %s", joinWords(volts))
 	}
 	p.companyDoubts(t, uses, say)
 	if info == nil {

@@ -3,8 +3,11 @@ package plan
 import (
 	"fmt"
 	"math"
+	"slices"
+	"strings"
 
 	"benchslip/analyze"
+	"benchslip/capture/stimulus"
 	"benchslip/capture/unit"
 )
 
@@ -23,6 +26,7 @@ const (
 	dcS     = 2  // a whole number of periods of 50 and of 60 Hz
 	switchS = 20 // 5 s quiet, then 15 s in which it settles
 	watchS  = 60
+	burstS  = 5 // full level, before anything gets hot
 	marginS = 1 // the first and last half second are for hands and keys
 )
 
@@ -44,7 +48,7 @@ func (p *planner) length(t *analyze.Take, uses []use, s stimulusOf) length {
 			put(switchS, 2, "5 s of quiet before switching, then 15 s to settle")
 		case n == needSquare:
 			p.edgeLength(u, put)
-		case n == needTone && !scope:
+		case n == needTone && !scope && (s.spec == nil || steadyTone(*s.spec)):
 			p.toneLength(u, put)
 		case n == needNothing:
 			p.quietLength(u, scope, put)
@@ -70,6 +74,10 @@ type put func(seconds, least float64, format string, args ...any)
 // needs 4/d (from 2/d on it is measured with a larger uncertainty; below,
 // refused), and five periods.
 func (p *planner) toneLength(u use, put put) {
+	if slices.Contains(partFullMeasures, u.check.Measure) {
+		put(burstS, 1, "full level for seconds only")
+		return
+	}
 	put(toneS, 1, "lines 1 Hz apart are told apart in about 8 s")
 	for _, f := range u.check.Params.At {
 		put(10/f, 5/f, "ten periods of %s", hertz(f))
@@ -77,6 +85,11 @@ func (p *planner) toneLength(u use, put put) {
 			put(4/gap, 2/gap, "the tone lies %s from the mains line at %s: 4/%.3g Hz", hertz(gap), hertz(line), gap)
 		}
 	}
+}
+
+// steadyTone reports whether a stimulus holds its tones for its whole length.
+func steadyTone(s stimulus.Spec) bool {
+	return slices.Contains([]string{"tone", "pilot", "multitone", "modulation-pair", "difference-pair"}, s.Kind)
 }
 
 // gapToMains is the distance of a tone from the nearest of the first five
@@ -188,9 +201,7 @@ func spanFor(t *analyze.Take, s stimulusOf) string {
 	if t.Wiring.Span != nil || s.spec == nil {
 		return ""
 	}
-	switch s.spec.Kind {
-	case "tone", "pilot", "multitone", "modulation-pair", "difference-pair", "white-noise", "pink-noise":
-	default:
+	if !steadyTone(*s.spec) && !strings.HasSuffix(s.spec.Kind, "-noise") {
 		return ""
 	}
 	start, long := s.spec.Span()

@@ -52,7 +52,7 @@ func partOfMeasure(measure string) (part, bool) {
 		{partCommon, []string{"cmrr"}},
 		{partSide, []string{"crosstalk", "balance"}},
 		{partEdge, []string{"rise_time", "fall_time", "settling_time", "overshoot", "droop", "slew_rate"}},
-		{partFull, []string{"max_output", "power", "clip_symmetry"}},
+		{partFull, partFullMeasures},
 		{partSwitch, []string{"thump"}},
 		{partWatch, []string{"events"}},
 	} {
@@ -62,6 +62,9 @@ func partOfMeasure(measure string) (part, bool) {
 	}
 	return part{}, false
 }
+
+// partFullMeasures drive a unit to its limits.
+var partFullMeasures = []string{"max_output", "power", "clip_symmetry"}
 
 // partOf is the latest part that a take is for; a take that tells the
 // instrument from the unit keeps its early place.

@@ -68,11 +68,22 @@ func (p *planner) facts(t *analyze.Take) facts {
 		}
 	}
 	f.speaker = p.speaker()
-	f.micInput = f.source != "" || f.measures("ein", "cmrr", "pickup") || p.mentions("phantom") || t.Setup != ""
+	f.micInput = p.microphone()
 	if g := gearOf(t, f.channel("out")); g != nil {
 		f.fullV = g.FullScalePeak
 	}
 	return f
+}
+
+// microphone reports whether the job is about an input that may carry phantom
+// power: of a preamp, or of the receiver at the end of a run.
+func (p *planner) microphone() bool {
+	for _, c := range p.job.Checks {
+		if c.Params.Source != nil && !p.speaker() || slices.Contains([]string{"ein", "cmrr", "pickup"}, c.Measure) {
+			return true
+		}
+	}
+	return p.mentions("phantom")
 }
 
 // speaker reports whether the job is about a stage that drives loudspeakers.
@@ -137,7 +148,10 @@ func (p *planner) level(t *analyze.Take, at part) string {
 	if f.role("common") {
 		return fmt.Sprintf("the player so that %s lies on the joined pins", voltText(p.limited(t, 0.5)))
 	}
-	if f.measures("max_output", "clip_symmetry") && f.role("take") {
+	if f.measures("clip_symmetry") && f.role("take") {
+		return "the player so that the output clips by a few dB, for seconds only; check that the recorder itself does not clip"
+	}
+	if f.measures("max_output") && f.role("take") {
 		return "the player so that the last level drives the output a few dB into clipping, for seconds only; check that the recorder itself does not clip"
 	}
 	out, why := p.outLevel(t, f)

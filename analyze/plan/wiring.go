@@ -96,7 +96,7 @@ func (d *drawing) drive(s stimulusOf) {
 	case f.measures("crosstalk"):
 		d.line(player, "unit, input of the driven channel", "")
 		d.line("[plug, "+orWords(f.source, "150 ohm")+"]", "unit, input of the other channel", "driven by nothing")
-	case f.micInput && !f.speaker:
+	case f.micInput:
 		d.line(player+" --"+pad, "unit, pins 2 and 3", "")
 		d.tap(in)
 	default:
@@ -114,7 +114,7 @@ func (d *drawing) tap(in string) {
 		return
 	}
 	what := "unit, input terminals"
-	if d.f.micInput && !d.f.speaker {
+	if d.f.micInput {
 		what = "unit, pins 2 and 3"
 	}
 	d.line(what, d.input("in"), "the signal as it enters")
