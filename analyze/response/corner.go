@@ -69,7 +69,7 @@ func runCorner(p *analyze.Pass, low bool) analyze.Result {
 	b.A("noise at the reference", ref.U/math.Abs(f.slope)*f.hz, ref.Dof)
 	steps := math.Hypot(u[at].StepU, ref.StepU)
 	b.B("converter steps", steps/math.Abs(f.slope)*f.hz)
-	b.B("resolution of the stimulus", u[at].SmoothU/math.Abs(f.slope)*f.hz)
+	b.B(modelName(c), u[at].ModelU/math.Abs(f.slope)*f.hz)
 	b.Clock(c.Out, f.hz)
 	b.Into(&r)
 	r.Details["corner_hz"], r.Details["order"], r.Details["method"] = f.hz, f.order, f.method
@@ -133,39 +133,40 @@ const trust = 2e-5
 
 // fitCorner interpolates the crossing between u[at-1] and u[at]. With
 // v = (f_x/f)^2 at the low end, (f/f_x)^2 at the high one, the magnitudes of
-// first- and second-order filters obey
+// filters of order n without zeros obey
 //
-//	|H(ref)|^2/|H|^2 = p_0 + p_1 v + p_2 v^2,
+//	|H(ref)|^2/|H|^2 = p_0 + p_1 v + ... + p_n v^n,
 //
-// which is linear in p: two poles, real or not, whatever the level between
-// them and the reference. First order (p_2 = 0) is tried first, over two
-// octaves to each side, then second, then narrower stretches; the first that
-// fits its points within three times their variance counts. Where none does
-// (steeper filters) the curve itself is interpolated.
+// which is linear in p, whatever the level between the pass band and the
+// reference. First order is tried first, over two octaves to each side, then
+// second, then narrower stretches, then third and fourth; the first that fits
+// its points within three times their variance counts. Where none does the
+// curve itself is interpolated.
 func fitCorner(u []transfer.Point, at int, ref, drop float64, low, dense bool) corner {
 	fx := math.Sqrt(u[at].Hz * u[at-1].Hz)
 	target := math.Pow(10, drop/10)
 	var best *corner
 	bestChi := math.Inf(1)
-	for _, octaves := range []float64{2, 1, 0.5} {
-		for order := 1; order <= 2; order++ {
-			f, chi, ok := fitModel(u, fx, ref, target, octaves, order, low)
-			if !ok || f.hz < fx/2 || f.hz > 2*fx {
-				continue
-			}
-			if dense { // neighbouring points share most of their lines
-				f.u *= math.Sqrt(3)
-				f.poleU *= math.Sqrt(3)
-			}
-			if chi <= 3 {
-				return f
-			}
-			if chi < bestChi {
-				keep := f
-				keep.u *= math.Sqrt(chi)
-				keep.poleU *= math.Sqrt(chi)
-				best, bestChi = &keep, chi
-			}
+	for _, try := range []struct {
+		octaves float64
+		order   int
+	}{{2, 1}, {2, 2}, {1, 1}, {1, 2}, {0.5, 1}, {0.5, 2}, {1, 3}, {1, 4}} {
+		f, chi, ok := fitModel(u, fx, ref, target, try.octaves, try.order, low)
+		if !ok || f.hz < fx/2 || f.hz > 2*fx {
+			continue
+		}
+		if dense { // neighbouring points share most of their lines
+			f.u *= math.Sqrt(3)
+			f.poleU *= math.Sqrt(3)
+		}
+		if chi <= 3 {
+			return f
+		}
+		if chi < bestChi {
+			keep := f
+			keep.u *= math.Sqrt(chi)
+			keep.poleU *= math.Sqrt(chi)
+			best, bestChi = &keep, chi
 		}
 	}
 	f := interpolate(u, at, ref, target)
@@ -178,7 +179,6 @@ func fitCorner(u []transfer.Point, at int, ref, drop float64, low, dense bool) c
 }
 
 func fitModel(u []transfer.Point, fx, ref, target, octaves float64, order int, low bool) (f corner, chi float64, ok bool) {
-	n := order + 1
 	var v, z, w []float64
 	for _, q := range u {
 		if math.Abs(math.Log2(q.Hz/fx)) > octaves {
@@ -192,33 +192,12 @@ func fitModel(u []transfer.Point, fx, ref, target, octaves float64, order int, l
 		s := 2 * y * math.Sqrt(q.U*q.U+q.StepU*q.StepU+trust*trust)
 		v, z, w = append(v, x*x), append(z, y), append(w, 1/(s*s))
 	}
-	if len(v) < n+1 {
+	if len(v) < order+2 {
 		return f, 0, false
 	}
-	p, cov, chi, ok := polynomial(v, z, w, n)
-	if !ok || p[0] <= 0 || p[1] <= 0 && order == 1 {
+	p, ok := polynomial(v, z, w, order+1)
+	if !ok || p.c[0] <= 0 {
 		return f, 0, false
-	}
-	value := func(x float64) float64 { return p[0] + x*(p[1]+x*p[2]) }
-	steep := func(x float64) float64 { return p[1] + 2*x*p[2] }
-	solve := func(t float64) (x float64, ok bool) {
-		if order == 1 {
-			x = (t - p[0]) / p[1]
-		} else if d := p[1]*p[1] - 4*p[2]*(p[0]-t); d >= 0 && p[2] != 0 {
-			// The root that the curve reaches while rising.
-			x = (-p[1] + math.Sqrt(d)) / (2 * p[2])
-		}
-		return x, x > 0 && steep(x) > 0
-	}
-	spread := func(x float64) float64 {
-		e := [3]float64{1, x, x * x}
-		s := 0.0
-		for i := 0; i < n; i++ {
-			for j := 0; j < n; j++ {
-				s += e[i] * e[j] * cov[i][j]
-			}
-		}
-		return math.Sqrt(math.Max(s, 0)) / (2 * x * steep(x))
 	}
 	hzOf := func(x float64) float64 {
 		if low {
@@ -226,75 +205,22 @@ func fitModel(u []transfer.Point, fx, ref, target, octaves float64, order int, l
 		}
 		return fx * math.Sqrt(x)
 	}
-	x, ok := solve(target)
+	// The corner lies within the stretch, the pole not far from it.
+	top := math.Exp2(2 * octaves)
+	x, ok := p.rises(target, 1/top, top)
 	if !ok {
 		return f, 0, false
 	}
-	f = corner{hz: hzOf(x), u: spread(x), dof: float64(len(v) - n), order: order,
+	f = corner{hz: hzOf(x), u: p.spread(x) / (2 * x * p.slope(x)), dof: float64(len(v) - order - 1), order: order,
 		method: fmt.Sprintf("magnitude of order %d fitted to %d points within %.2g octaves", order, len(v), octaves)}
-	f.slope = x * steep(x) / value(x) // d ln|H|/d ln f = -(1/2) d ln z/d ln f, v goes with f^-2
+	f.slope = x * p.slope(x) / p.value(x) // d ln|H|/d ln f = -(1/2) d ln z/d ln f, v goes with f^-2
 	if !low {
 		f.slope = -f.slope
 	}
-	if y, ok := solve(2 * p[0]); ok {
-		f.pole, f.poleU = hzOf(y), spread(y)
+	if y, ok := p.rises(2*p.c[0], 1/top/16, top*16); ok {
+		f.pole, f.poleU = hzOf(y), p.spread(y)/(2*y*p.slope(y))
 	}
-	return f, chi, true
-}
-
-// polynomial fits z = p_0 + p_1 v + p_2 v^2 (n terms) with weights 1/variance;
-// chi is chi-square over its degrees of freedom.
-func polynomial(v, z, w []float64, n int) (p [3]float64, cov [3][3]float64, chi float64, ok bool) {
-	var a [3][3]float64
-	var b [3]float64
-	for k := range v {
-		e := [3]float64{1, v[k], v[k] * v[k]}
-		for i := 0; i < n; i++ {
-			b[i] += w[k] * e[i] * z[k]
-			for j := 0; j < n; j++ {
-				a[i][j] += w[k] * e[i] * e[j]
-			}
-		}
-	}
-	var d [3]float64
-	for i := 0; i < n; i++ {
-		d[i] = 1 / math.Sqrt(a[i][i])
-	}
-	// Gauss-Jordan on the scaled matrix.
-	var m [3][6]float64
-	for i := 0; i < n; i++ {
-		for j := 0; j < n; j++ {
-			m[i][j] = a[i][j] * d[i] * d[j]
-		}
-		m[i][n+i] = 1
-	}
-	for i := 0; i < n; i++ {
-		if m[i][i] < 1e-13 {
-			return p, cov, 0, false
-		}
-		for j := 2*n - 1; j >= i; j-- {
-			m[i][j] /= m[i][i]
-		}
-		for r := 0; r < n; r++ {
-			if r == i {
-				continue
-			}
-			for j := 2*n - 1; j >= i; j-- {
-				m[r][j] -= m[r][i] * m[i][j]
-			}
-		}
-	}
-	for i := 0; i < n; i++ {
-		for j := 0; j < n; j++ {
-			cov[i][j] = m[i][n+j] * d[i] * d[j]
-			p[i] += cov[i][j] * b[j]
-		}
-	}
-	for k := range v {
-		r := z[k] - p[0] - v[k]*(p[1]+v[k]*p[2])
-		chi += w[k] * r * r
-	}
-	return p, cov, chi / float64(len(v)-n), true
+	return f, p.chi, true
 }
 
 // interpolate finds the crossing on a cubic of ln|H| over ln f through the

@@ -50,6 +50,13 @@ func runFlatness(p *analyze.Pass) analyze.Result {
 			Advice: "raise the level, or play the stimulus longer"}
 		return r
 	}
+	if low, high := ends(inside); low > band.Low*edge*hair || high*edge*hair < band.High {
+		r.Refusal = &analyze.Refusal{Code: analyze.NotEnoughPoints,
+			Text: fmt.Sprintf("take %q: the frequencies that count reach from %.5g Hz to %.5g Hz, not over the band %.5g Hz .. %.5g Hz; %d in it have no support",
+				c.Out.Take.Name, low, high, band.Low, band.High, out),
+			Advice: "raise the level, or play longer steps"}
+		return r
+	}
 	worst, plus, minus := inside[0], math.Inf(-1), math.Inf(1)
 	for _, q := range inside {
 		d := level(q.H) - level(ref.H)
@@ -71,6 +78,15 @@ func runFlatness(p *analyze.Pass) analyze.Result {
 		r.Conditional = fmt.Sprintf("%d of %d frequencies in the band have no support", out, out+len(inside))
 	}
 	return r
+}
+
+// ends are the lowest and the highest frequency of points.
+func ends(points []transfer.Point) (low, high float64) {
+	low = math.Inf(1)
+	for _, q := range points {
+		low, high = math.Min(low, q.Hz), math.Max(high, q.Hz)
+	}
+	return low, high
 }
 
 // within lists the points in a band that count, and how many do not. Curves

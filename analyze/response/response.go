@@ -98,17 +98,25 @@ func ratioBudget(c *transfer.Curve, q, ref transfer.Point, v float64) budget.Bud
 	if q.Hz == ref.Hz {
 		return b
 	}
-	addPoint(&b, "", q, v)
-	addPoint(&b, " at the reference", ref, v)
+	addPoint(&b, c, "", q, v)
+	addPoint(&b, c, " at the reference", ref, v)
 	// A clock off by d reads both responses at frequencies off by d.
 	b.Clock(c.Out, v*(c.LogSlope(q.Hz)-c.LogSlope(ref.Hz)))
 	return b
 }
 
-func addPoint(b *budget.Budget, where string, q transfer.Point, value float64) {
+func addPoint(b *budget.Budget, c *transfer.Curve, where string, q transfer.Point, value float64) {
 	b.A("noise"+where, q.U*value, q.Dof)
 	b.B("converter steps"+where, q.StepU*value)
-	b.B("resolution of the stimulus"+where, q.SmoothU*value)
+	b.B(modelName(c)+where, q.ModelU*value)
+}
+
+// modelName says what a point's ModelU stands for.
+func modelName(c *transfer.Curve) string {
+	if c.Dense {
+		return "resolution of the stimulus"
+	}
+	return "settling of the step"
 }
 
 // unsupported says why a point has no value, and what can be said instead.
@@ -183,7 +191,7 @@ func points(c *transfer.Curve, ref transfer.Point) []map[string]any {
 			e["gain_db"], e["phase_deg"], e["relative_db"] = level(q.H), c.PhaseDeg(q), level(q.H)-level(ref.H)
 		}
 		if q.Used {
-			u := 2 * budget.RSS(q.U, q.StepU, q.SmoothU)
+			u := 2 * budget.RSS(q.U, q.StepU, q.ModelU)
 			e["uncertainty_db"], e["uncertainty_deg"] = budget.DecibelsPer(unit.Ratio)*u, u*180/math.Pi
 			e["coherence"], e["group_delay_s"] = q.Coherence, groups[i]
 		} else {

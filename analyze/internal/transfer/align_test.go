@@ -34,8 +34,8 @@ func TestOneChannel(t *testing.T) {
 		{"pink-noise length=2s", 0.3, 0.1},
 		{"pulse length=2s", 0.5, 0.3},
 	} {
-		in := played(t, c.text)
-		y := filtered(late(in, 60, 0.0037, float64(len(in.X))/in.Rate+0.5), h).Noise(1e-5, 1)
+		in := trial.Played(c.text)
+		y := late(in, 60, 0.0037, float64(len(in.X))/in.Rate+0.5).Through(h).Noise(1e-5, 1)
 		tk := trial.Take("t", y)
 		tk.Stimulus = c.text
 		curve, bad := Of(passOf(tk), tk, "take")
@@ -60,8 +60,8 @@ func TestOneChannel(t *testing.T) {
 // The stimulus as a file, at twice the rate of the take.
 func TestOneChannelFromFile(t *testing.T) {
 	h := chain(highpass(20), lowpass(20000))
-	in := played(t, "sweep length=1500ms to=20kHz rate=96kHz")
-	y := filtered(late(in, -40, 0.1, 4), h)
+	in := trial.Played("sweep length=1500ms to=20kHz rate=96kHz")
+	y := late(in, -40, 0.1, 4).Through(h)
 	half := &trial.Signal{Rate: 48000, X: resample(y.X, len(y.X)/2, 0, 2)}
 	tk := trial.Take("t", half.Noise(1e-5, 1))
 	tk.Stimulus = "sweep.wav"
@@ -139,11 +139,11 @@ func TestResample(t *testing.T) {
 func TestDelay(t *testing.T) {
 	const ends = " before=100ms after=200ms"
 	for _, text := range []string{"sweep length=500ms" + ends, "multitone length=2s" + ends, "stepped-tones count=10 each=100ms gap=50ms" + ends, "white-noise length=1s" + ends} {
-		in := played(t, text)
+		in := trial.Played(text)
 		for _, tau := range []float64{37.5 / 48000, 10e-6, -20e-6} {
 			for _, sign := range []complex128{1, -1} {
 				h := chain(delayed(tau), func(float64) complex128 { return sign })
-				c := curveOf(t, filtered(in, h).Noise(1e-5, 3), in)
+				c := curveOf(t, in.Through(h).Noise(1e-5, 3), in)
 				name := fmt.Sprintf("%s, %.6g us, sign %g", text, tau*1e6, real(sign))
 				if e := math.Abs(c.DelayS - tau); e > 2e-8 || e > 4*c.DelayU+1e-10 {
 					t.Errorf("%s: %.6g us +- %.2g", name, c.DelayS*1e6, 2*c.DelayU*1e6)

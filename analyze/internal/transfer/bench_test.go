@@ -1,11 +1,15 @@
 package transfer
 
-import "testing"
+import (
+	"testing"
+
+	"benchslip/analyze/internal/trial"
+)
 
 // processor time, since other work may share the machine
 func benchmark(b *testing.B, text string) {
-	in := played(b, text)
-	out := filtered(in, highpass(10)).Noise(1e-4, 1)
+	in := trial.Played(text)
+	out := in.Through(highpass(10)).Noise(1e-4, 1)
 	in.Noise(1e-4, 2)
 	b.ResetTimer()
 	t0 := cpu()

@@ -230,7 +230,7 @@ func (sp *spectra) point(hz float64, sh *Shape, noise func(float64) float64) Poi
 	q.Slope = e.Slope * complex(hz/sp.stepHz, 0)
 	// |H| is moved by the part of the error along it: half of the mean square.
 	q.U = math.Sqrt(e.Share/2) / cmplx.Abs(e.H)
-	q.SmoothU = 0.05 * math.Pow(half/hz, 4)
+	q.ModelU = 0.05 * math.Pow(half/hz, 4)
 	return q
 }
 

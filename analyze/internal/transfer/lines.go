@@ -71,12 +71,33 @@ func step(p *analyze.Pass, out, in *analyze.Signal, st Step) Point {
 		nu = r.Nu[0]
 	}
 	q.Hz = nu * rate
-	X := fitLines(x, multiples(nu, 3), nil, 1, in.Step)
+	periods := nu * float64(n)
+	later := 0 // samples at the start that a second look leaves out
+	if periods < watched {
+		later = min(n*3/8, int(float64(n)-fewest/nu))
+	}
+	lateX, lateY := append([]float64(nil), x[later:]...), append([]float64(nil), y[later:]...)
 	nus := multiples(nu, mostHarmonics)
-	Y := fitLines(y, nus, mainsBeside(p, nus, rate, n), 1, out.Step)
-	q.set(Y[0], X[0])
+	fit := func(x, y []float64, q *Point) {
+		X := fitLines(x, multiples(nu, 3), nil, 1, in.Step)
+		Y := fitLines(y, nus, mainsBeside(p, nus, rate, len(y)), 1, out.Step)
+		q.set(Y[0], X[0])
+	}
+	fit(x, y, &q)
+	if later > 0 && q.Why == "" {
+		var late Point
+		if fit(lateX, lateY, &late); late.Why == "" {
+			// Beyond what the noise of the shorter part explains.
+			d := cmplx.Abs(late.H/q.H - 1)
+			q.ModelU = math.Sqrt(math.Max(d*d-2*late.U*late.U, 0))
+		}
+	}
 	return q
 }
+
+// watched is how many periods a step must hold before what settles (coupling
+// capacitors) is of no more account.
+const watched = 40
 
 // multiples lists the harmonics of nu, cycles a sample, below half the rate.
 func multiples(nu float64, most int) []float64 {

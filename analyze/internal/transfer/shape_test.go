@@ -36,9 +36,9 @@ func TestShapes(t *testing.T) {
 		"stepped-levels count=5 each=200ms":             Tone,
 		"level-ramp length=2s":                          Tone,
 	} {
-		in := played(t, text)
+		in := trial.Played(text)
 		for i, scale := range []float64{1, 0.01} {
-			x := copyOf(in)
+			x := in.Copy()
 			for k := range x.X {
 				x.X[k] *= scale
 			}
@@ -94,7 +94,7 @@ func TestLawOfSweep(t *testing.T) {
 // 63 (2015) 786): L = round(f1 T/ln(f2/f1))/f1 = 1.45 s for 20 Hz to 20 kHz
 // in 10 s.
 func TestLawOfOwnSweep(t *testing.T) {
-	sh := shapeOfSignal(played(t, "sweep length=10s"))
+	sh := shapeOfSignal(trial.Played("sweep length=10s"))
 	if math.Abs(sh.Law.L-1.45) > 1e-6 {
 		t.Errorf("L %.9g", sh.Law.L)
 	}
@@ -118,7 +118,7 @@ func TestForeignSweeps(t *testing.T) {
 				in.X[i] = 0.3 * fade * math.Sin(2*math.Pi*math.Mod(phase(s), 1))
 			}
 		}
-		out := filtered(in, h).Noise(2e-5, 1)
+		out := in.Through(h).Noise(2e-5, 1)
 		db, deg, _ := worst(curveOf(t, out, in.Noise(1e-5, 2)), h)
 		if db > 0.01 || deg > 0.1 {
 			t.Errorf("%s: off by %.4f dB, %.3f deg", name, db, deg)
@@ -135,7 +135,7 @@ func TestNothingToHear(t *testing.T) {
 	tone := trial.New(48000, 1).Tone(1000, 0.1, 0)
 	click := trial.New(48000, 1)
 	click.X[20000] = 1
-	cut := played(t, "sweep length=1s")
+	cut := trial.Played("sweep length=1s")
 	cut.X = cut.X[60000:80000]
 	for name, c := range map[string]struct {
 		in, out *trial.Signal
@@ -149,7 +149,7 @@ func TestNothingToHear(t *testing.T) {
 		"48 samples":         {tiny, tiny, ""},
 		"one sample":         {click, click, ""},
 		"cut sweep":          {cut, cut, ""},
-		"sweep into silence": {played(t, "sweep length=1s"), trial.New(48000, played(t, "sweep length=1s").Rate/48000*float64(len(played(t, "sweep length=1s").X))/48000), analyze.NotEnoughPoints},
+		"sweep into silence": {trial.Played("sweep length=1s"), trial.New(48000, trial.Played("sweep length=1s").Rate/48000*float64(len(trial.Played("sweep length=1s").X))/48000), analyze.NotEnoughPoints},
 		"pulse into silence": {click, silent, analyze.NotEnoughPoints},
 	} {
 		tk := trial.Take("t", c.out, c.in)

@@ -8,40 +8,8 @@ import (
 	"time"
 
 	"benchslip/analyze"
-	"benchslip/analyze/internal/spectrum"
 	"benchslip/analyze/internal/trial"
-	"benchslip/capture/stimulus"
 )
-
-// played makes the samples of a stimulus from its description.
-func played(t testing.TB, text string) *trial.Signal {
-	t.Helper()
-	s, err := stimulus.Parse(text)
-	if err != nil {
-		t.Fatal(err)
-	}
-	g, err := stimulus.New(s)
-	if err != nil {
-		t.Fatal(err)
-	}
-	x := make([]float64, s.Frames())
-	g.Next(x)
-	return &trial.Signal{Rate: float64(s.RateHz), X: x}
-}
-
-// filtered passes x through H(f), exactly at every line of a transform that
-// is padded to twice the length.
-func filtered(x *trial.Signal, h func(f float64) complex128) *trial.Signal {
-	n := spectrum.FastLengthUp(2 * len(x.X))
-	w := spectrum.NewWhole(n)
-	X := w.Forward(x.X)
-	step := x.Rate / float64(n)
-	for k := range X {
-		X[k] *= h(float64(k) * step)
-	}
-	X[len(X)-1] = complex(real(X[len(X)-1]), 0)
-	return &trial.Signal{Rate: x.Rate, X: w.Back(X)[:len(x.X)]}
-}
 
 // Closed forms of circuits.
 func highpass(fc float64) func(float64) complex128 {
@@ -81,10 +49,6 @@ func chain(hs ...func(float64) complex128) func(float64) complex128 {
 	}
 }
 
-func copyOf(a *trial.Signal) *trial.Signal {
-	return &trial.Signal{Rate: a.Rate, X: append([]float64(nil), a.X...)}
-}
-
 func passOf(tk *analyze.Take) *analyze.Pass {
 	return trial.Pass(nil, analyze.Params{}, map[string]*analyze.Take{"take": tk})
 }
@@ -114,7 +78,7 @@ func worst(c *Curve, h func(float64) complex128) (db, deg, chi float64) {
 		e := q.H / h(q.Hz) * turnsOf(q.Hz*ideal.DelayS)
 		db = math.Max(db, math.Abs(20*math.Log10(cmplx.Abs(e)))-4*8.69*q.U)
 		deg = math.Max(deg, math.Abs(cmplx.Phase(e))*180/math.Pi-4*57.3*q.U)
-		r := (cmplx.Abs(e) - 1) / math.Hypot(q.U, math.Hypot(q.SmoothU, 1e-6))
+		r := (cmplx.Abs(e) - 1) / math.Hypot(q.U, math.Hypot(q.ModelU, 1e-6))
 		chi += r * r / float64(len(u))
 	}
 	return db, deg, chi

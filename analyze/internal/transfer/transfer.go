@@ -49,9 +49,11 @@ type Point struct {
 	U, Dof float64
 	// StepU is what converter steps add to U where no dither hides them.
 	StepU float64
-	// SmoothU is what the width of the stretch of lines may add: a corner of
-	// first order within it, bent over +-B, moves the value by 0.05 (B/f)^4.
-	SmoothU float64
+	// ModelU is what the estimator itself may add, relative. Of curves that
+	// fill the band: a corner of first order, bent over the +-B of lines that
+	// are joined, moves the value by 0.05 (B/f)^4. Of low steps: how far their
+	// later part departs from the whole, since the unit may still be settling.
+	ModelU float64
 	// Share is the mean square that noise adds to |H|^2.
 	Share     float64
 	Coherence float64 // 0..1
@@ -217,7 +219,7 @@ func (c *Curve) between(hz float64) Point {
 		q = b
 	}
 	q.Hz = hz
-	q.U, q.StepU, q.SmoothU = math.Max(a.U, b.U), math.Max(a.StepU, b.StepU), math.Max(a.SmoothU, b.SmoothU)
+	q.U, q.StepU, q.ModelU = math.Max(a.U, b.U), math.Max(a.StepU, b.StepU), math.Max(a.ModelU, b.ModelU)
 	if !a.Used || !b.Used || a.H == 0 || b.H == 0 {
 		return q
 	}

@@ -33,10 +33,10 @@ func TestCircuits(t *testing.T) {
 		{"two poles below", chain(highpass(12), highpass(3))},
 	}
 	for _, text := range short {
-		in := played(t, text)
-		heard := copyOf(in).Noise(1e-4, 2)
+		in := trial.Played(text)
+		heard := in.Copy().Noise(1e-4, 2)
 		for i, u := range units {
-			out := filtered(in, u.h).Noise(1e-4, uint64(10+i))
+			out := in.Through(u.h).Noise(1e-4, uint64(10+i))
 			c := curveOf(t, out, heard)
 			db, deg, chi := worst(c, u.h)
 			if db > 0.01 || deg > 0.1 {
@@ -74,9 +74,9 @@ func TestScipyFilters(t *testing.T) {
 		t.Fatal(err)
 	}
 	for _, text := range []string{"sweep length=3s", "white-noise length=3s"} {
-		in := played(t, text)
+		in := trial.Played(text)
 		for _, f := range file.Filters {
-			out := copyOf(in)
+			out := in.Copy()
 			for _, s := range f.SOS {
 				var a, b float64 // transposed direct form II
 				for i, x := range out.X {
@@ -114,10 +114,10 @@ func TestScipyFilters(t *testing.T) {
 // (polynomial nonlinearity; cos 2 phi and sin 3 phi against sin 2 phi and
 // sin 3 phi of the synchronised sweep).
 func TestOrders(t *testing.T) {
-	in := played(t, "sweep to=9kHz length=4s peak=-0.5dBFS")
+	in := trial.Played("sweep to=9kHz length=4s peak=-0.5dBFS")
 	A := math.Pow(10, -0.5/20)
 	a, b := 0.02, 0.01
-	out := copyOf(in)
+	out := in.Copy()
 	for i, x := range in.X {
 		out.X[i] = x + a*x*x + b*x*x*x
 	}
@@ -177,7 +177,7 @@ func mustSignal(t *testing.T, tk *analyze.Take, key string) *analyze.Signal {
 func TestCoherence(t *testing.T) {
 	const sigma, noise = 0.1, 0.1
 	in := trial.New(48000, 4).Noise(sigma, 1)
-	out := copyOf(in).Noise(noise, 2)
+	out := in.Copy().Noise(noise, 2)
 	c := curveOf(t, out, in)
 	want := 1 / (1 + noise*noise/(sigma*sigma))
 	sum, count, ratio := 0.0, 0.0, 0.0
@@ -206,8 +206,8 @@ func TestCoherence(t *testing.T) {
 func TestHum(t *testing.T) {
 	h := highpass(10)
 	for _, text := range short {
-		in := played(t, text)
-		out := filtered(in, h).Mains(50.02, 0.01, []float64{3e-4, 1e-4, 2e-4, 0, 1e-4}, 3).Noise(1e-5, 1)
+		in := trial.Played(text)
+		out := in.Through(h).Mains(50.02, 0.01, []float64{3e-4, 1e-4, 2e-4, 0, 1e-4}, 3).Noise(1e-5, 1)
 		c := curveOf(t, out, in)
 		db, deg, _ := worst(c, h)
 		if db > 0.01 || deg > 0.1 {
