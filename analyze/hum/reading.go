@@ -80,8 +80,8 @@ func testTone(p *analyze.Pass, s *analyze.Signal, o stage.Options) *stage.Tone {
 	}
 	v := stage.SurveyOf(p, s)
 	gap, order := stage.NearMains(tone.Hz, tone.MainsHz, familyOrders)
-	// The survey knows the comb from its low orders only roughly.
-	if order <= 5 || gap > 2*v.ToleranceHz()+0.004*tone.Hz {
+	// Without other orders the comb may lie anywhere in the supply's range.
+	if order <= 5 || gap > 2*v.ToleranceHz()+0.01*tone.Hz {
 		return tone
 	}
 	o.Tone = tone
@@ -95,7 +95,7 @@ func testTone(p *analyze.Pass, s *analyze.Signal, o stage.Options) *stage.Tone {
 	top := l.Fundamental().Power
 	if others == 0 || !l.MainsFound {
 		// Alone and weak it is more likely the one order that shows.
-		if gap <= 0.01*tone.Hz && top < 300*v.Floor[min(int(tone.Hz/v.StepHz), len(v.Floor)-1)]*v.RBW() {
+		if top < 300*v.Floor[min(int(tone.Hz/v.StepHz), len(v.Floor)-1)]*v.RBW() {
 			return nil
 		}
 		return tone

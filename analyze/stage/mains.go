@@ -108,7 +108,7 @@ func combNear(v *Survey, nominal float64, skip func(float64) bool) comb {
 			continue
 		}
 		c := score(v, p.Hz/k, skip)
-		c.Score -= k // low orders make the surer guess
+		c.Score -= k / 5 // low orders make the surer guess
 		if c.Score > best.Score {
 			best = c
 		}
