@@ -76,7 +76,7 @@ func TestCouplingCapacitor(t *testing.T) {
 	const pole = 9.64575413
 	R, _ := unit.Parse("50 kohm")
 	tolerance, _ := unit.Parse("1 %")
-	for _, text := range []string{"sweep from=4Hz length=3s", "stepped-tones from=4Hz to=4kHz count=31 each=600ms gap=100ms", "multitone from=3Hz to=20kHz length=8s", "white-noise length=6s"} {
+	for _, text := range []string{"sweep from=4Hz length=6s", "stepped-tones from=4Hz to=4kHz count=31 each=600ms gap=100ms", "multitone from=3Hz to=20kHz length=8s", "white-noise length=6s"} {
 		b := bench(text, coupled(pole), 2e-5)
 		r := b.Run(cornerLow, analyze.Params{Resistance: &analyze.Stated{Value: R, Uncertainty: &tolerance, Key: "resistance"}})
 		if v := value(t, r); math.Abs(v/9.66868-1) > 0.0005 {
@@ -101,7 +101,7 @@ func TestCouplingCapacitor(t *testing.T) {
 			t.Errorf("%s: no points", text)
 		}
 	}
-	b := bench("sweep from=4Hz length=4s", coupled(pole), 2e-5)
+	b := bench("sweep from=4Hz length=6s", coupled(pole), 2e-5)
 	r := b.Run(response, analyze.Params{At: []float64{20}})
 	if v := db(value(t, r)); math.Abs(v+0.908226678-db(cmplx.Abs(coupled(pole)(1000)))*-1) > 0.002 {
 		t.Errorf("at 20 Hz: %.5f dB", v)
@@ -144,7 +144,7 @@ func TestCorners(t *testing.T) {
 		{"half a decibel", both(coupled(15), rolled(14000)), true, 1, 0.5},
 		{"ten decibel", both(coupled(60), rolled(14000)), true, 1, 10},
 	}
-	for _, text := range []string{"sweep from=10Hz length=2s before=300ms after=500ms", "stepped-tones from=10Hz to=20kHz count=34 each=200ms gap=50ms"} {
+	for _, text := range []string{"sweep from=10Hz length=2s before=300ms after=500ms", "stepped-tones from=10Hz to=20kHz count=34 each=400ms gap=50ms"} {
 		for _, c := range cases {
 			m, far := cornerHigh, 23000.0
 			if c.low {

@@ -216,6 +216,11 @@ func (sp *spectra) point(hz float64, sh *Shape, noise func(float64) float64) Poi
 		}
 	}
 	g.half = half / sp.stepHz
+	// Over a wide stretch a response bends more than a parabola does; beside
+	// the terms of other orders more powers would not be told apart.
+	if half > 0.1*hz && len(g.leads) == 0 && 2*g.half/sp.stretch > 16 {
+		g.order = 4
+	}
 	if noise != nil {
 		g.noiseX = noise(hz)
 	}
@@ -231,6 +236,9 @@ func (sp *spectra) point(hz float64, sh *Shape, noise func(float64) float64) Poi
 	// |H| is moved by the part of the error along it: half of the mean square.
 	q.U = math.Sqrt(e.Share/2) / cmplx.Abs(e.H)
 	q.ModelU = 0.05 * math.Pow(half/hz, 4)
+	if g.order == 4 {
+		q.ModelU = 0.01 * math.Pow(half/hz, 6)
+	}
 	return q
 }
 

@@ -51,7 +51,8 @@ type Point struct {
 	StepU float64
 	// ModelU is what the estimator itself may add, relative. Of curves that
 	// fill the band: a corner of first order, bent over the +-B of lines that
-	// are joined, moves the value by 0.05 (B/f)^4. Of low steps: how far their
+	// are joined, moves the value by 0.05 (B/f)^4, or 0.01 (B/f)^6 where four
+	// powers are fitted. Of low steps: how far their
 	// later part departs from the whole, since the unit may still be settling.
 	ModelU float64
 	// Share is the mean square that noise adds to |H|^2.
