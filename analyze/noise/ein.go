@@ -114,7 +114,7 @@ func runEIN(p *analyze.Pass) analyze.Result {
 	// Noise at the recorder, then at the input, then at the source's EMF.
 	volts := math.Sqrt(net.P)
 	var own budget.Budget
-	own.A("noise statistics", net.U/(2*volts), 0)
+	own.A("noise statistics", net.U/(2*volts), n.dof)
 	own.Scale(s, volts)
 	v, lines := stage.Refer(volts, own, s, g)
 	up := toEMF(p.Params)
@@ -132,6 +132,7 @@ func runEIN(p *analyze.Pass) analyze.Result {
 		"span_s": spanOf(s), "averages": n.lines.Noise.Averages, "gain_db": dB.FromLinear(g.G), "noise_v": volts,
 		"plane": plane(p.Params), "thermal_dbu": nil, "noise_figure_db": nil,
 		"hum_v": math.Sqrt(math.Max(stage.LinesIn(n.band, curve, n.lines.Mains).P, 0)) / g.G}
+	n.character(p, &r, g.G/up)
 	for k, d := range floor.Details {
 		r.Details[k] = d
 	}

@@ -50,6 +50,7 @@ type reading struct {
 	stage.Power
 	lines *stage.Lines
 	band  stage.Band
+	dof   float64 // of U where the parts' scatter decided it; 0: infinite
 }
 
 // read takes a signal apart and sums everything in the band under the
@@ -59,8 +60,26 @@ func read(p *analyze.Pass, s *analyze.Signal, b analyze.Band, weighting string) 
 	if bad != nil {
 		return reading{}, bad
 	}
-	l := stage.Apart(p, "take", s, 0)
-	return reading{stage.Everything(l, band, stage.Weighting(weighting)), l, band}, nil
+	l, gain := stage.Apart(p, "take", s, 0), stage.Weighting(weighting)
+	r := reading{Power: stage.Everything(l, band, gain), lines: l, band: band}
+	if r.P > 0 {
+		r.dof = r.unsteady(p, s, weightingName(weighting), gain)
+	}
+	return r, nil
+}
+
+// character adds what the noise is made of: its white and 1/f parts, and jumps
+// between levels. gain takes densities to the input.
+func (r reading) character(p *analyze.Pass, res *analyze.Result, gain float64) {
+	if q, ok := shapeOf(r.lines); ok {
+		q.into(res.Details, gain)
+	}
+	b := burstsIn(p, r.lines)
+	b.largest, b.limit = b.largest/gain, b.limit/gain
+	b.into(res, r.lines.Sig.Unit)
+	if r.dof > 0 {
+		res.Notes = append(res.Notes, "the noise is not steady: its power scatters from part to part of the take by more than its statistics explain, and the uncertainty says so")
+	}
 }
 
 // toneFlag names a line that is no mains line and holds over a tenth of the
@@ -130,13 +149,14 @@ func runNoise(p *analyze.Pass) analyze.Result {
 	}
 	v := math.Sqrt(n.P)
 	var bud budget.Budget
-	bud.A("noise statistics", n.U/(2*v), 0)
+	bud.A("noise statistics", n.U/(2*v), n.dof)
 	bud.Scale(s, v)
 	r := analyze.Result{Value: &v, Unit: u, FullScaleSine: s.FullScaleSine()}
 	bud.Into(&r)
 	r.Flags = n.toneFlag(stage.Weighting(p.Params.Weighting))
 	r.Details = map[string]any{"band_hz": []float64{b.Low, b.High}, "weighting": weightingName(p.Params.Weighting), "detector": "RMS",
 		"span_s": spanOf(s), "averages": n.lines.Noise.Averages, "hum_v": math.Sqrt(math.Max(stage.LinesIn(n.band, stage.Weighting(p.Params.Weighting), n.lines.Mains).P, 0))}
+	n.character(p, &r, 1)
 	r.Figures = []analyze.Figure{stage.SpectrumFigure(p, n.lines)}
 	f, ok, bad := stage.TakeFloor(p, n.Power, func(s *analyze.Signal) (stage.Power, *analyze.Refusal) {
 		n, bad := read(p, s, b, p.Params.Weighting)
@@ -199,6 +219,7 @@ func runDensity(p *analyze.Pass) analyze.Result {
 	r := analyze.Result{Value: &v, Unit: u}
 	b.Into(&r)
 	r.Details = map[string]any{"at_hz": at, "averages": averages, "span_s": spanOf(s), "band_hz": []float64{lo, hi}}
+	reading{lines: l}.character(p, &r, 1)
 	r.Figures = []analyze.Figure{stage.SpectrumFigure(p, l)}
 	return r
 }
@@ -207,13 +228,35 @@ var snr = &analyze.Measure{
 	Name:  "snr",
 	Title: "signal to noise ratio",
 	Doc: "Power of the tone over the power in the band less fundamental, harmonics 2 to 10 and DC; hum counts as noise, `weighting` acts on the noise. With " +
-		"`ref_level` that level over the noise of the take, no tone needed.",
+		"`ref_level` that level over the noise of the take, no tone needed. With a tone near -60 dBFS the details hold the dynamic range of AES17.",
 	Formula:  "SNR = 20 lg(U_1 / U_n)",
 	Standard: "IEEE Std 1241 (SNR)",
 	Unit:     "dB",
 	Roles:    []string{"take"},
 	Keys:     []string{"at", "band", "weighting", "floor", "ref_level"},
 	Run:      runSNR,
+}
+
+// dynamicRange is that of AES17, dB: a full-scale sine over what is left beside
+// a tone 60 dB below it (so that converters work), harmonics included, under
+// the 468 curve shifted to 0 dB at 2 kHz and read as RMS. ok is false for
+// tones farther than 5 dB from -60 dBFS and rates that do not hold 20 kHz.
+func dynamicRange(l *stage.Lines, toneRMS float64) (float64, bool) {
+	full := l.Sig.FullScaleSine()
+	if full == 0 || math.Abs(20*math.Log10(toneRMS/full)+60) > 5 {
+		return 0, false
+	}
+	band, bad := ready(l.Sig, analyze.Band{Low: 20, High: 20000})
+	if bad != nil {
+		return 0, false
+	}
+	curve := stage.Weighting("468")
+	at2k := curve(2000)
+	rest := stage.NoiseIn(l, band, curve).Plus(stage.LinesIn(band, curve, l.Harm[1:], l.Mains, l.Others)).P / at2k
+	if rest <= 0 {
+		return 0, false
+	}
+	return 20 * math.Log10(full/math.Sqrt(rest)), true
 }
 
 func runSNR(p *analyze.Pass) analyze.Result {
@@ -293,6 +336,10 @@ func runSNR(p *analyze.Pass) analyze.Result {
 	if l.Tone != nil {
 		r.Details["fundamental"] = map[string]any{"frequency_hz": l.Tone.Hz, "rms_v": signal}
 		r.Details["gap_hz"] = l.GapHz
+		if d, ok := dynamicRange(l, signal); ok && p.Params.RefLevel == nil {
+			r.Details["dynamic_range_db"] = d
+			r.Details["dynamic_range_method"] = "AES17: full-scale sine over all but a tone near -60 dBFS, 20 Hz to 20 kHz, 468 curve with 0 dB at 2 kHz, RMS; of the recorder's full scale"
+		}
 	}
 	r.Figures = []analyze.Figure{stage.SpectrumFigure(p, l)}
 	for k, d := range f.Details {
