@@ -31,11 +31,17 @@ type bench struct {
 // now and then, which cost more time.
 func newBench(seed uint64, full bool) *bench {
 	b := &bench{Rand: rand.New(rand.NewPCG(seed, 2026)), id: seed << 8}
-	b.rate = []float64{8000, 11025, 12000, 16000}[b.IntN(4)]
-	b.seconds = 1 + b.Float64()
-	if full && b.IntN(6) == 0 {
-		b.rate = []float64{44100, 48000}[b.IntN(2)]
-		b.seconds = 2 + 4*b.Float64()
+	b.rate = []float64{8000, 11025, 12000}[b.IntN(3)]
+	b.seconds = b.uniform(0.7, 1.1)
+	if full {
+		b.seconds = b.uniform(1, 2)
+		switch b.IntN(8) {
+		case 0:
+			b.rate = []float64{44100, 48000}[b.IntN(2)]
+			b.seconds = b.uniform(1, 4)
+		case 1:
+			b.seconds = b.uniform(5, 12)
+		}
 	}
 	b.bits, b.dither = []int{16, 24, 24}[b.IntN(3)], true
 	b.full = math.Pow(10, b.uniform(-0.3, 1.3))
@@ -76,11 +82,10 @@ func (b *bench) density(rms float64) float64 { return rms / math.Sqrt(b.rate/2) 
 // band is the widest band of the rate that a job would state.
 func (b *bench) band() analyze.Band { return analyze.Band{Low: 20, High: math.Min(20000, 0.45*b.rate)} }
 
-// tone draws a test tone clear of the mains, with at least five harmonics
-// below half the rate.
+// tone draws a test tone clear of the mains, with five harmonics in the band.
 func (b *bench) tone() float64 {
 	for {
-		hz := b.logarithmic(70, b.rate/13)
+		hz := b.logarithmic(70, b.rate/13.5)
 		d := math.Abs(hz - b.mains*math.Round(hz/b.mains))
 		if d > 5/b.seconds || hz > 5.5*b.mains && d > 2/b.seconds {
 			return hz

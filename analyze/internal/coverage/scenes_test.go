@@ -7,6 +7,7 @@ import (
 	"benchslip/analyze"
 	"benchslip/analyze/internal/spectrum"
 	"benchslip/analyze/internal/trial"
+	"benchslip/capture/recording/memory"
 	"benchslip/capture/unit"
 )
 
@@ -46,6 +47,9 @@ var above = []scene{
 	{"cmrr", "cmrr", func(b *bench) sample { return cmrrOf(b, 10, 50) }},
 	{"ein, stated gain", "ein", func(b *bench) sample { return einOf(b, 0) }},
 	{"ein, stated input level", "ein", func(b *bench) sample { return einOf(b, 1) }},
+	{"noise over a floor", "noise", func(b *bench) sample { return flooredOf(b, "") }},
+	{"noise A over a floor", "noise", func(b *bench) sample { return flooredOf(b, "A") }},
+	{"thdn over a floor", "thdn", flooredResidual},
 	{"ein, two-channel gain", "ein", func(b *bench) sample { return einOf(b, 2) }},
 }
 
@@ -272,8 +276,8 @@ func humOf(b *bench, lo, hi float64, order int) sample {
 		u[k] = b.threshold(noise) * math.Pow(10, b.uniform(lo, hi)/20)
 	}
 	s := b.addHum(b.volts(), u).Noise(noise, b.next())
-	if b.IntN(3) == 0 {
-		s.Tone(b.tone(), 0.3*b.full, b.phase())
+	if b.IntN(3) == 0 { // clear of the twenty orders that count
+		s.Tone(b.uniform(1060, 0.3*b.rate), 0.3*b.full, b.phase())
 	}
 	truth := math.Sqrt(square(u))
 	if order > 0 {
@@ -333,4 +337,34 @@ func einOf(b *bench, kind int) sample {
 		roles["gain_take"] = b.record("g", out, b.volts().Tone(hz, amp/g, b.phase()).Noise(amp/g*1e-3, b.next()))
 	}
 	return sample{params: par, roles: roles, truth: math.Sqrt(p) / g}
+}
+
+// flooredOf draws a noise take 6..20 dB over the recorder's own noise, which
+// has a take of its own.
+func flooredOf(b *bench, weighting string) sample {
+	b.bits = 24
+	band := b.band()
+	own := b.full * b.logarithmic(1e-5, 1e-3)
+	unit := own * math.Sqrt(math.Pow(10, b.uniform(6.5, 20)/10)-1) // powers add
+	s := b.volts()
+	p := b.coloured(s, unit, 0, band, weighting)
+	floor := b.volts().Noise(own, b.next())
+	roles := one(b.record("t", s.Noise(own, b.next())))
+	roles["floor"] = b.record("f", floor)
+	return sample{params: analyze.Params{Band: &band, Weighting: weighting}, roles: roles, truth: math.Sqrt(p)}
+}
+
+// flooredResidual draws a tone whose noise stands 6..20 dB over the recorder's.
+func flooredResidual(b *bench) sample {
+	s := flooredOf(b, "")
+	t := s.roles["take"]
+	hz, amp := b.tone(), 0.5*b.full
+	clean := &trial.Signal{Rate: b.rate, X: make([]float64, t.Rec.Info().Frames)}
+	clean.Tone(hz, amp*(1+b.scale)/b.full, b.phase())
+	data := t.Rec.(*memory.Recording).Data[0]
+	for i, v := range clean.X {
+		data[i] += v
+	}
+	s.truth /= math.Hypot(s.truth, amp/math.Sqrt2)
+	return s
 }
