@@ -35,17 +35,18 @@ var shared = []string{
 // stages names what else a room may import on its own floor. "*" is a list
 // that gathers the others.
 var stages = map[string][]string{
-	"capture":          {"*"},
-	"capture/stimulus": {"capture/wav"}, // writes what is to be played
-	"analyze":          {},
-	"analyze/measures": {"*"},
-	"analyze/run":      {"*"},
-	"analyze/look":     {"analyze/intake"},
-	"analyze/plan":     {"analyze/job"}, // plans what a job names
-	"report/renderers": {"*"},
-	"report/html":      {"report/figure", "report/text"},
-	"report/pdf":       {"report/figure"},
-	"report/markdown":  {"report/figure"},
+	"capture":           {"*"},
+	"capture/stimulus":  {"capture/wav"}, // writes what is to be played
+	"analyze":           {},
+	"analyze/measures":  {"*"},
+	"analyze/run":       {"*"},
+	"analyze/look":      {"analyze/intake"},
+	"analyze/plan":      {"analyze/job"}, // plans what a job names
+	"analyze/calibrate": {"analyze/intake"},
+	"report/renderers":  {"*"},
+	"report/html":       {"report/figure", "report/text"},
+	"report/pdf":        {"report/figure"},
+	"report/markdown":   {"report/figure"},
 }
 
 // owners of third-party modules, by import path prefix.
