@@ -79,6 +79,7 @@ func Run(ctx context.Context, j *job.Job, opt Options) (*slip.Slip, error) {
 	if err != nil {
 		return nil, err
 	}
+	byGain(s.Checks, rows)
 	for i, t := range j.Takes {
 		s.Takes[i] = intake.Entry(t)
 	}
