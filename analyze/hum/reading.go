@@ -79,8 +79,12 @@ func testTone(p *analyze.Pass, s *analyze.Signal, o stage.Options) *stage.Tone {
 		return tone
 	}
 	v := stage.SurveyOf(p, s)
-	gap, order := stage.NearMains(tone.Hz, tone.MainsHz, familyOrders)
 	// Without other orders the comb may lie anywhere in the supply's range.
+	supply := p.MainsHz
+	if supply == 0 {
+		supply = tone.MainsHz
+	}
+	gap, order := stage.NearMains(tone.Hz, supply, familyOrders)
 	if order <= 5 || gap > 2*v.ToleranceHz()+0.01*tone.Hz {
 		return tone
 	}
