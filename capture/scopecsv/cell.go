@@ -114,6 +114,9 @@ func valued(c cell) cell {
 // noValue recognises the ways to write that there is no value; the result
 // says which, "" when b is something else.
 func noValue(b []byte) string {
+	if len(b) == 0 {
+		return ""
+	}
 	if len(b) > 16 {
 		if strings.Trim(string(b), "#") == "" {
 			return "####"
@@ -131,7 +134,7 @@ func noValue(b []byte) string {
 	switch {
 	case strings.Trim(t, "#") == "", strings.Trim(t, "*") == "", strings.Trim(t, "?") == "":
 		return t
-	case strings.Trim(t, "-") == "", strings.Trim(t, "\u2013\u2014") == "", strings.Trim(t, ".") == "", strings.Trim(t, "_") == "":
+	case strings.Trim(t, "-") == "", strings.Trim(t, "\u2012\u2013\u2014\u2212") == "", strings.Trim(t, ".") == "", strings.Trim(t, "_") == "":
 		return t
 	case strings.HasPrefix(t, "#") && strings.ContainsAny(t[len(t)-1:], "?!a"):
 		return t // a spreadsheet's error word: #NAME?, #VALUE!, #N/A

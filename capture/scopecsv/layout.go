@@ -93,7 +93,9 @@ func shapeOf(b []byte) shape {
 			return noNumber
 		}
 	}
-	b = bytes.TrimPrefix(b, minusSign)
+	if len(b) > len(minusSign) {
+		b = bytes.TrimPrefix(b, minusSign)
+	}
 	whole := func(mark byte) bool {
 		_, n := num.Scan(b, mark)
 		if n == 0 || n == len(b) {
