@@ -3,7 +3,6 @@ package stage
 import (
 	"fmt"
 	"math"
-	"math/cmplx"
 
 	"benchslip/analyze"
 	"benchslip/analyze/internal/budget"
@@ -122,139 +121,17 @@ func ResidualFloor(p *analyze.Pass, l *Lines, b Band, rest Power, fundamental fl
 			return FloorLimited(r, *r.Value, !inverse, f.Ratio)
 		}
 		v := value(f.Net.P)
-		grow := v / *r.Value * rest.P / f.Net.P * f.Net.U / rest.U
+		grow := 1.0
+		if rest.U > 0 {
+			grow = v / *r.Value * rest.P / f.Net.P * f.Net.U / rest.U
+		}
 		r.Value = &v
 		for i := range r.Budget {
 			r.Budget[i].U *= grow
 		}
 		rest = f.Net
 	}
-	if !p.Has("loop") {
-		return r
-	}
-	d, bad := loopOrders(p, l, l.Harm[1:])
-	if bad != nil {
-		return analyze.RefuseWith(r.Unit, bad)
-	}
-	low, high := rest.P, rest.P
-	for _, o := range d {
-		if !b.InLine(o.hz) {
-			continue
-		}
-		low += fundamental * (o.low*o.low - o.read*o.read)
-		high += fundamental * (o.high*o.high - o.read*o.read)
-	}
-	if low == high && low > 0 {
-		v := value(low)
-		r.Value = &v
-		return r
-	}
-	lo, hi := value(math.Max(low, 0)), value(math.Max(high, 1e-300))
-	if inverse {
-		lo, hi = hi, lo
-	}
-	r.Interval = &[2]float64{lo, hi}
-	if mean := math.Sqrt(rest.P / math.Max(high-rest.P, 1e-300)); mean < 10 {
-		r.Conditional = "the recorder's own harmonics are less than 20 dB below the unit's"
-	}
-	return r
-}
-
-// loopOrder is one harmonic with the recorder's own taken off, relative to
-// the fundamental: low..high is where the unit's may lie, equal when phases
-// are known; read is the reading.
-type loopOrder struct {
-	order           int
-	hz              float64
-	low, high, read float64
-	own             float64 // the recorder's, relative
-}
-
-// loopOrders compares harmonics with those of the take of role "loop". They
-// add as vectors: with an `in` channel in both takes each is turned by its
-// order times the fundamental's phase, scaled to equal fundamentals and
-// subtracted; else only the range |a-b| .. a+b is known.
-func loopOrders(p *analyze.Pass, l *Lines, set []Line) ([]loopOrder, *analyze.Refusal) {
-	sig, bad := p.Signal("loop", "out")
-	if bad != nil {
-		return nil, bad
-	}
-	tn, bad := FindTone(p, l.Tone.Hz, sig)
-	if bad != nil {
-		return nil, bad
-	}
-	top := 0
-	for _, q := range set {
-		top = max(top, q.Order)
-	}
-	own := Decompose(p, sig, Options{Tone: tn, Orders: top})
-	if own.Fundamental() == nil || abs2(own.Phasor()) == 0 {
-		return nil, &analyze.Refusal{Code: analyze.NoTone, Text: fmt.Sprintf("take %q holds no tone", sig.Take.Name), Advice: "record the loop with the same tone"}
-	}
-	known := p.Wired("take", "in") && p.Wired("loop", "in")
-	rel := func(l *Lines, q Line) complex128 {
-		z := l.Phasor()
-		turn := cmplx.Rect(1, -float64(q.Order)*cmplx.Phase(z))
-		return q.Z * turn / complex(cmplx.Abs(z), 0)
-	}
-	var out []loopOrder
-	for _, q := range set {
-		a := rel(l, q)
-		o := loopOrder{order: q.Order, hz: q.Hz, read: math.Sqrt(math.Max(q.Power, 0) / l.Fundamental().Power)}
-		o.low, o.high = o.read, o.read
-		for _, w := range own.Harm {
-			if w.Order != q.Order {
-				continue
-			}
-			c := rel(own, w)
-			o.own = math.Sqrt(math.Max(w.Power, 0) / own.Fundamental().Power)
-			if known {
-				share := 2 * (q.Share/l.Fundamental().Power + w.Share/own.Fundamental().Power) / 2
-				o.low = math.Sqrt(math.Max(abs2(a-c)-share, 0))
-				o.high = o.low
-			} else {
-				o.low, o.high = budget.VectorRange(o.read, o.own)
-			}
-		}
-		out = append(out, o)
-	}
-	return out, nil
-}
-
-// LoopHarmonics applies `loop` to the root of the sum of harmonics over ref
-// (RMS).
-func LoopHarmonics(p *analyze.Pass, l *Lines, set []Line, r analyze.Result, ref float64) analyze.Result {
-	if !p.Has("loop") || r.Value == nil {
-		return r
-	}
-	d, bad := loopOrders(p, l, set)
-	if bad != nil {
-		return analyze.RefuseWith(r.Unit, bad)
-	}
-	scale := math.Sqrt(l.Fundamental().Power) / ref
-	var low, high, own float64
-	list := []map[string]any{}
-	for _, o := range d {
-		low += o.low * o.low
-		high += o.high * o.high
-		own += o.own * o.own
-		list = append(list, map[string]any{"order": o.order, "relative": o.read, "recorder": o.own, "low": o.low, "high": o.high})
-	}
-	lo, hi := math.Sqrt(low)*scale, math.Sqrt(high)*scale
-	r.Details["loop"] = list
-	r.Details["loop_take"] = p.Take("loop").Name
-	if lo == hi {
-		// Two readings of equal kind: their noise adds.
-		r.Value = &lo
-		r.Details["loop_method"] = "vector difference, phases known"
-		return r
-	}
-	r.Details["loop_method"] = "range, phases unknown"
-	r.Interval = &[2]float64{lo, hi}
-	if math.Sqrt(own)*scale > *r.Value/10 {
-		r.Conditional = "the recorder's own harmonics are less than 20 dB below the unit's"
-	}
-	return r
+	return loopResidual(p, l, b, rest, fundamental, r, value)
 }
 
 // Floor puts a floored power into a result that is the root of the total
