@@ -29,7 +29,7 @@ var (
 
 // Measures lists the measures of this package.
 func Measures() []*analyze.Measure {
-	return []*analyze.Measure{riseTime, fallTime, settlingTime, overshoot, droop, slewRate, ripple, thump}
+	return []*analyze.Measure{riseTime, fallTime, settlingTime, overshoot, droop, slewRate, ripple, thump, oscillation}
 }
 
 // mostSamples is what a measure of this package reads at once (8 bytes each).
