@@ -218,12 +218,18 @@ func (g *regression) fit(lo, hi, terms int, out map[[2]int]bool, test bool) (est
 // about in a thousand stretches: |r|^2 of noise is exponential, its median
 // ln 2 times its mean.
 func (g *regression) outliers(size []float64, lo, hi int) map[[2]int]bool {
-	sorted := append([]float64(nil), size...)
-	sort.Float64s(sorted)
-	limit := sorted[len(sorted)/2] / math.Ln2 * math.Log(float64(len(size))*1e3)
-	if sorted[len(sorted)-1] <= limit {
+	rare := math.Log(float64(len(size)) * 1e3)
+	largest, mean := 0.0, 0.0
+	for _, s := range size {
+		largest = math.Max(largest, s)
+		mean += s / float64(len(size))
+	}
+	if largest <= rare*mean { // the mean is never far under what the median gives
 		return nil
 	}
+	sorted := append([]float64(nil), size...)
+	sort.Float64s(sorted)
+	limit := sorted[len(sorted)/2] / math.Ln2 * rare
 	var out map[[2]int]bool
 	i := 0
 	var phi [mostTerms]complex128

@@ -14,6 +14,7 @@ import (
 var short = []string{
 	"sweep length=3s",
 	"sweep from=5Hz to=22kHz length=3s before=400ms after=600ms",
+	"sweep from=20Hz to=9kHz length=2s rate=96kHz",
 	"stepped-tones count=16 each=300ms gap=50ms",
 	"multitone length=2s",
 	"white-noise length=2s",
