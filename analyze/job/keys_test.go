@@ -320,12 +320,12 @@ func TestEveryOtherKey(t *testing.T) {
 			"stimulus": "sweep from=20Hz to=20kHz length=10s peak=-10dBFS", "where": "40 dB", "csv": 3}},
 		{keys.CSV, "[takes.t]\n", map[string]string{
 			"separator": `csv.separator = ";"`, "decimal": `csv.decimal = ","`, "skip": `csv.skip = 2`, "time_column": `csv.time_column = "none"`,
-			"time_unit": `csv.time_unit = "us"`, "rate": `csv.rate = "1 MHz"`, "value_unit": `csv.value_unit = "mV"`,
+			"time_unit": `csv.time_unit = "us"`, "rate": `csv.rate = "1 MHz"`, "value_unit": `csv.value_unit = "mV"`, "resample": `csv.resample = true`,
 		}, func(j *Job, k string) any {
 			o := j.Takes[0].CSV
 			return map[string]any{"separator": o.Separator, "decimal": o.Decimal, "skip": o.Skip, "time_column": o.TimeColumn,
-				"time_unit": o.TimeUnit, "rate": o.RateHz, "value_unit": o.ValueUnit}[k]
-		}, map[string]any{"separator": ";", "decimal": ",", "skip": 2, "time_column": "none", "time_unit": "us", "rate": 1e6, "value_unit": "mV"}},
+				"time_unit": o.TimeUnit, "rate": o.RateHz, "value_unit": o.ValueUnit, "resample": o.Resample}[k]
+		}, map[string]any{"separator": ";", "decimal": ",", "skip": 2, "time_column": "none", "time_unit": "us", "rate": 1e6, "value_unit": "mV", "resample": true}},
 	} {
 		for _, k := range keys.At(c.place) {
 			line, ok := c.lines[k.Name]

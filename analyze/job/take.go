@@ -153,6 +153,7 @@ func (r *reader) csv(n *node, name string) recording.Options {
 		Skip:      r.integer(get("skip")),
 		TimeUnit:  r.word(get("time_unit")),
 		ValueUnit: r.word(get("value_unit")),
+		Resample:  r.boolean(get("resample")),
 	}
 	o.TimeColumn = r.channels(get("time_column"))
 	if q := r.quantity(get("rate")); q != nil {

@@ -92,6 +92,7 @@ var table = []Key{
 	{Name: "time_unit", In: CSV, Kind: Word, Words: []string{"s", "ms", "us", "ns"}, Default: "found", Doc: "unit of the time column"},
 	{Name: "rate", In: CSV, Kind: Quantity, Dims: hertz, Unit: "Hz", Sign: Positive, Default: "found", Doc: "sample rate to use"},
 	{Name: "value_unit", In: CSV, Kind: Word, Words: []string{"V", "mV", "uV"}, Default: "found", Doc: "unit of the values"},
+	{Name: "resample", In: CSV, Kind: Bool, Default: "false", Doc: "put samples taken at uneven times on an even grid (straight between them)"},
 
 	{Name: "name", In: Check, Kind: Text, Doc: "name of the row"},
 	{Name: "measure", In: Check, Kind: Word, Doc: "what is measured"},

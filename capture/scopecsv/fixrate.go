@@ -144,7 +144,7 @@ func (a *assembly) rateFromColumn(stated *figure) error {
 	case m.pairs:
 		a.flag(recording.RateDoubt, 0, nil, nil, "two rows a time stamp give no sample rate; state it if they are samples: %s", rateKey)
 	default:
-		a.flag(recording.RateDoubt, 0, nil, nil, "no one rate fits the time column (median step %s, mean %s); state one: %s", seconds3(m.median), seconds3(m.step), rateKey)
+		a.flag(recording.RateDoubt, 0, nil, nil, "no one rate fits the time column (median step %s, mean %s); state one: %s, or set resample = true there", seconds3(m.median), seconds3(m.step), rateKey)
 	}
 	if a.opt.Resample && !m.even && !m.pairs {
 		return a.resample(m, stated)

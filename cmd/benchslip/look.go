@@ -92,6 +92,7 @@ to the RMS of a full-scale sine. Levels of scope files are volts as written.`,
 type csvOptions struct {
 	separator, decimal, timeColumn, timeUnit, rate, valueUnit string
 	skip                                                      int
+	resample                                                  bool
 }
 
 func (c *csvOptions) add(cmd *cobra.Command) {
@@ -103,11 +104,12 @@ func (c *csvOptions) add(cmd *cobra.Command) {
 	f.StringVar(&c.timeUnit, "csv-time-unit", "", "`UNIT` of a CSV's times: s, ms, us, ns")
 	f.StringVar(&c.rate, "csv-rate", "", "sample `RATE` of a CSV: \"10 MHz\"")
 	f.StringVar(&c.valueUnit, "csv-value-unit", "", "`UNIT` of a CSV's values: V, mV, uV")
+	f.BoolVar(&c.resample, "csv-resample", false, "put a CSV's samples taken at uneven times on an even grid")
 }
 
 func (c *csvOptions) options(cmd *cobra.Command) (capture.Options, error) {
 	opt := capture.Options{Separator: c.separator, Decimal: c.decimal, Skip: c.skip,
-		TimeColumn: c.timeColumn, TimeUnit: c.timeUnit, ValueUnit: c.valueUnit}
+		TimeColumn: c.timeColumn, TimeUnit: c.timeUnit, ValueUnit: c.valueUnit, Resample: c.resample}
 	if c.rate != "" {
 		q, err := unit.Parse(c.rate)
 		if err != nil || q.Unit.Dim != unit.Hertz || q.Linear() <= 0 {
