@@ -76,14 +76,14 @@ type Curve struct {
 	// Stated: In is the stated stimulus, brought to the recorder's clock; the
 	// gain then has no absolute meaning. ClockPPM is how much faster the
 	// player ran than the recorder, DelayS when the stimulus began in the take.
-	Stated             bool
-	ClockPPM, ClockU   float64
-	StartS             float64
-	DelayS, DelayU     float64 // common delay of the points, s: see delay
-	Phase0             float64 // phase that the delay's straight line has at 0 Hz, rad
-	Scatter            float64 // RMS of the phases about that line, rad
-	Description, Notes string  // of the stimulus, in words
-	Impulse            Impulse
+	Stated           bool
+	ClockPPM, ClockU float64
+	StartS           float64
+
+	DelayS, DelayU float64 // common delay of the points, s: see delay
+	Phase0         float64 // phase that the delay's straight line has at 0 Hz, rad
+	Scatter        float64 // RMS of the phases about that line, rad
+	Impulse        Impulse
 }
 
 // Impulse is what the band-limited impulse response shows at its largest.
@@ -97,8 +97,8 @@ type Impulse struct {
 // standard uncertainty of 10 % is 0.9 dB.
 const detectable = 0.1
 
-// finish puts the points in order, marks those without support, and removes
-// nothing.
+// finish puts the points in order, marks those without support, and finds
+// the common delay.
 func (c *Curve) finish() {
 	sort.SliceStable(c.Points, func(a, b int) bool { return c.Points[a].Hz < c.Points[b].Hz })
 	for i := range c.Points {
@@ -129,7 +129,7 @@ func (c *Curve) Used() []Point {
 	return out
 }
 
-// sixth of an octave, half and 1/24 of one as ratios.
+// Half an octave and 1/24 of one as ratios.
 var (
 	halfOctave = math.Sqrt2
 	near       = math.Pow(2, 1.0/24)
