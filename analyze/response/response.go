@@ -192,7 +192,11 @@ func points(c *transfer.Curve, ref transfer.Point) []map[string]any {
 		}
 		if q.Used {
 			u := 2 * budget.RSS(q.U, q.StepU, q.ModelU)
-			e["uncertainty_db"], e["uncertainty_deg"] = budget.DecibelsPer(unit.Ratio)*u, u*180/math.Pi
+			skew := 0.0 // deg; of two channels only
+			if !c.Stated {
+				skew = 2 * 360 * q.Hz * c.Out.Gear.Skew
+			}
+			e["uncertainty_db"], e["uncertainty_deg"] = budget.DecibelsPer(unit.Ratio)*u, math.Hypot(u*180/math.Pi, skew)
 			e["coherence"], e["group_delay_s"] = q.Coherence, groups[i]
 		} else {
 			e["why"] = q.Why
