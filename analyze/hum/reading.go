@@ -46,7 +46,10 @@ func read(p *analyze.Pass, role string, s *analyze.Signal, orders int) (*reading
 			o.Supply = l
 		}
 	}
-	o.Tone = testTone(p, s, o)
+	// Two supplies to choose from: the other's lines are no test tone.
+	if p.MainsHz != 0 || stage.Decompose(p, s, o).Rival == 0 {
+		o.Tone = testTone(p, s, o)
+	}
 	l := stage.Decompose(p, s, o)
 	if len(l.Mains) == 0 {
 		return nil, &analyze.Refusal{Code: analyze.TooShort,
@@ -75,7 +78,7 @@ const (
 // testTone finds what a take's tone is, nil when its strongest line is hum.
 func testTone(p *analyze.Pass, s *analyze.Signal, o stage.Options) *stage.Tone {
 	tone, _ := stage.FindTone(p, 0, s)
-	if tone == nil || !tone.MainsResolved {
+	if tone == nil || !tone.MainsResolved && p.MainsHz != 0 {
 		return tone
 	}
 	v := stage.SurveyOf(p, s)
@@ -83,6 +86,16 @@ func testTone(p *analyze.Pass, s *analyze.Signal, o stage.Options) *stage.Tone {
 	supply := p.MainsHz
 	if supply == 0 {
 		supply = tone.MainsHz
+	}
+	if l := stage.Decompose(p, s, o); l.MainsFound {
+		// The strongest line may be a low order itself: so near to one no tone
+		// is told from it.
+		if gap, order := stage.NearMains(tone.Hz, l.MainsHz, 5); order <= 5 && gap < math.Max(2/s.DurationS(), off) {
+			return nil
+		}
+		if p.MainsHz == 0 {
+			supply = l.MainsHz
+		}
 	}
 	gap, order := stage.NearMains(tone.Hz, supply, familyOrders)
 	if order <= 5 || gap > 2*v.ToleranceHz()+0.01*tone.Hz {

@@ -51,7 +51,9 @@ func findComb(v *Survey, nominalHz, durationS float64, skip func(hz float64) boo
 				rival = c
 			}
 			best.Rival = &rival
-		case c.Score > best.Score && (i < 2 || best.Score == 0 && c.credible(3)):
+		case c.Score > best.Score && i < 2:
+			best = c
+		case i >= 2 && c.credible(3) && c.covers(best):
 			best = c
 		}
 	}
@@ -84,6 +86,18 @@ func (c comb) credible(orders int) bool {
 		low = low || o <= 2
 	}
 	return len(c.Orders) >= orders && low
+}
+
+// covers: every line of the other comb is one of c's too, so that c explains
+// it: 50 Hz as order 3 of 16.7 Hz, 400 Hz as order 8 of 50 Hz.
+func (c comb) covers(other comb) bool {
+	for _, o := range other.Orders {
+		hz := float64(o) * other.Hz
+		if d, _ := NearMains(hz, c.Hz, MaxOrder); d > 1 {
+			return false
+		}
+	}
+	return true
 }
 
 // related: both combs live on the same peaks (300 Hz is 6 x 50 and 5 x 60).
