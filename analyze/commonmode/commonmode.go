@@ -27,7 +27,9 @@ var cmrr = &analyze.Measure{
 	Title: "common-mode rejection ratio",
 	Doc: "Differential gain over common-mode gain at one frequency or several. `differential`: the drive between pin 2 and pin 3; `common`: both pins driven " +
 		"together against pin 1. Gains from `in` or `in_level` of each take, so levels may differ; both at one gain setting. Of several frequencies the " +
-		"smallest ratio is the value and the worst verdict the row's.",
+		"smallest ratio is the value and the worst verdict the row's. For the imbalanced source of the standard record `common` twice more, with 10 ohm in series " +
+		"with either leg, and give each a row: the worse one counts. With phases (`in` in both takes) the details hold the parts of the common-mode gain, and with " +
+		"r1 .. r4 what to trim: R1 from pin 3 to the inverting input, R2 its feedback, R3 from pin 2 to the other input, R4 from there to 0 V.",
 	Formula:  "CMRR = 20 lg(|G_d| / |G_c|)",
 	Standard: "IEC 60268-3 (balance of the input; there with 10 ohm of source imbalance)",
 	Unit:     "dB",
@@ -142,13 +144,10 @@ func measure(p *analyze.Pass, d, c *analyze.Take, hz float64) point {
 // out of the noise in `out`.
 func hearCommon(p *analyze.Pass, c *analyze.Take, d *stage.Heard) (h *stage.Heard, seen bool, bad *analyze.Refusal) {
 	h = &stage.Heard{}
-	if h.Out, bad = p.SignalOf(c, "common", "out"); bad != nil {
+	if h.Out, h.In, h.Steps, bad = stage.Channels(p, c, "common", d.Tone.Hz); bad != nil {
 		return nil, false, bad
 	}
-	if p.Wiring(c).In != "" {
-		if h.In, bad = p.SignalOf(c, "common", "in"); bad != nil {
-			return nil, false, bad
-		}
+	if h.In != nil {
 		if h.Tone, bad = stage.FindTone(p, d.Tone.Hz, h.In, h.Out); bad != nil {
 			return nil, false, bad
 		}
@@ -235,11 +234,35 @@ func gather(p *analyze.Pass, points []point) analyze.Result {
 		}
 	}
 	r.Details["points"] = list
-	if m, ok := w.mismatch(); ok {
-		r.Details["mismatch"] = m
-		r.Details["mismatch_note"] = "(R4/R3)/(R2/R1) - 1 of a one-op-amp stage that holds all the gain"
-	} else {
-		r.Details["mismatch"] = nil
+	r.Details["mismatch"] = nil
+	if mid := near1k(points); mid >= 0 {
+		if e, u, ok := points[mid].mismatch(); ok {
+			r.Details["mismatch"], r.Details["mismatch_uncertainty"], r.Details["mismatch_hz"] = e, 2*u, points[mid].hz
+			r.Details["mismatch_note"] = "(R4/R3)/(R2/R1) - 1 of a one-op-amp stage that holds all the gain"
+		}
+	}
+	if q, ok := partsOf(points); ok {
+		r.Details["parts"] = q.details()
+		r.Opinions = append(r.Opinions, q.opinions()...)
+		for _, say := range []struct {
+			key  string
+			look func() ([]string, map[string]any)
+		}{
+			{"trim", func() ([]string, map[string]any) { return trim(p, points, q) }},
+			{"capacitance", func() ([]string, map[string]any) { return capacitors(p, q) }},
+			{"coupling", func() ([]string, map[string]any) { return coupling(p, q) }},
+			{"loading", func() ([]string, map[string]any) { return loading(p) }},
+		} {
+			text, more := say.look()
+			if more != nil {
+				r.Details[say.key] = more
+			}
+			if say.key == "loading" {
+				r.Notes = append(r.Notes, text...)
+			} else {
+				r.Opinions = append(r.Opinions, text...)
+			}
+		}
 	}
 	if !w.mains && w.diff != nil {
 		r.Details["mains_resolved"] = false
@@ -275,35 +298,6 @@ func (pt point) details() map[string]any {
 		e["common_phase_deg"] = cmplx.Phase(pt.gc) * 180 / math.Pi
 	}
 	return e
-}
-
-// mismatch is (R4/R3)/(R2/R1) - 1, signed, of a one-op-amp difference stage
-// that holds all the gain: both gains turned by -arg G_d, a = |G_d| - Re G_c/2
-// = R2/R1, b = (a + Re G_c)/(1 - Re G_c) = R4/R3. It needs phases.
-func (pt point) mismatch() (float64, bool) {
-	if pt.refusal != nil || !pt.phases {
-		return 0, false
-	}
-	turn := cmplx.Rect(1, -cmplx.Phase(pt.gd))
-	c := real(pt.gc * turn)
-	a := cmplx.Abs(pt.gd) - c/2
-	if a <= 0 || c >= 1 {
-		return 0, false
-	}
-	b := (a + c) / (1 - c)
-	return b/a - 1, true
-}
-
-// fixture prints how far the fixture itself lets the reading go: unequal
-// source resistors into a common-mode impedance convert dR/Z.
-func fixture(p *analyze.Pass) []string {
-	s, m := p.Params.Source, p.Params.SourceMatch
-	if s == nil || m == nil {
-		return nil
-	}
-	r := s.Value.Linear() / 2
-	limit := 20 * math.Log10(4000/(2*r**m))
-	return []string{fmt.Sprintf("fixture: two %.4g ohm resistors matched to %.3g %% stop the reading near %.1f dB at 4 kohm a leg; printed, not applied", r, *m*100, limit)}
 }
 
 func figure(points []point) analyze.Figure {
