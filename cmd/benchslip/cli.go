@@ -133,7 +133,8 @@ limits of a job file, and writes a slip to attach to a ticket.`,
 	})
 	root.SetHelpFunc(func(cmd *cobra.Command, _ []string) { a.help(cmd) })
 	root.AddCommand(a.runCommand(), a.lookCommand(), a.measureCommand(),
-		a.newCommand(), a.planCommand(), a.stimulusCommand(), a.calibrateCommand(), a.demoCommand(),
+		a.newCommand(), a.planCommand(), a.stimulusCommand(), a.calibrateCommand(),
+		a.compareCommand(), a.recheckCommand(), a.demoCommand(),
 		a.completionCommand(), a.versionCommand())
 	root.SetHelpCommand(a.helpCommand())
 	root.InitDefaultHelpCmd()

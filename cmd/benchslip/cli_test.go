@@ -222,7 +222,7 @@ func TestUsage(t *testing.T) {
 }
 
 func TestHelp(t *testing.T) {
-	commands := [][]string{{"run"}, {"look"}, {"measure"}, {"new"}, {"plan"}, {"stimulus"}, {"stimulus", "sweep"}, {"calibrate"}, {"demo"}, {"completion"}, {"version"}, {"help"}}
+	commands := [][]string{{"run"}, {"look"}, {"measure"}, {"new"}, {"plan"}, {"stimulus"}, {"stimulus", "sweep"}, {"calibrate"}, {"compare"}, {"recheck"}, {"demo"}, {"completion"}, {"version"}, {"help"}}
 	for _, m := range measures.All() {
 		commands = append(commands, []string{"measure", m.Name})
 	}
