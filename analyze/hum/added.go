@@ -90,7 +90,7 @@ func add(run, base *reading, top int) added {
 			s := sr + sb
 			variance += 2*math.Max(d, 0)*s + s*s
 			a.seen = a.seen || d+s > s*math.Log(float64(2*top)/stage.FalseAlarm)
-			lost += math.Max(0, q.Power-abs2(zr)/2+sr-2*q.U) + math.Max(0, b.Power-abs2(zb)/2+sb-2*b.U)
+			lost += math.Max(0, q.Power-abs2(zr)/2+sr-q.U) + math.Max(0, b.Power-abs2(zb)/2+sb-b.U)
 			o.add = math.Sqrt(math.Max(d, 0))
 			o.low, o.high = o.add, o.add
 		} else {

@@ -116,7 +116,7 @@ func difference(p *analyze.Pass, res *analyze.Result, run, base *reading, c comb
 	}
 	var b budget.Budget
 	b.A("noise at the lines", a.noise, 0)
-	b.B("phases that wander against the reference", a.lost/2)
+	b.B("phases that wander against the reference", budget.Rectangular(a.lost))
 	b.B("level change of the mains reference", a.driftU())
 	b.B("converter steps", stage.StepU(run.Lines))
 	b.Scale(run.Sig, a.value)

@@ -37,13 +37,16 @@ func read(p *analyze.Pass, role string, s *analyze.Signal, orders int) (*reading
 	o := stage.Options{Mains: max(orders, familyOrders)}
 	if p.Wiring(s.Take).Mains != "" {
 		ref, bad := p.SignalOf(s.Take, role, "mains")
-		if bad != nil {
+		switch {
+		case bad != nil && bad.Code == analyze.MissingTake && role != "take":
+			// A take beside the main one may do without.
+		case bad != nil:
 			return nil, bad
-		}
-		l := stage.Decompose(p, ref, stage.Options{})
-		if l.MainsFound && l.Rival == 0 {
-			r.supply = &reading{Lines: l, hz: l.MainsHz}
-			o.Supply = l
+		default:
+			if l := stage.Decompose(p, ref, stage.Options{}); l.MainsFound && l.Rival == 0 {
+				r.supply = &reading{Lines: l, hz: l.MainsHz}
+				o.Supply = l
+			}
 		}
 	}
 	// Two supplies to choose from: the other's lines are no test tone.

@@ -160,7 +160,11 @@ func (r *runner) result(row job.Row) analyze.Result {
 		return analyze.RefuseWith(own, bad)
 	}
 	one := func(mains ...*analyze.Take) analyze.Result {
-		res := m.Run(&analyze.Pass{Measure: m, Params: &c.Params, Roles: row.Roles(mains...), MainsHz: r.job.MainsHz, Stages: r.stages})
+		roles := row.Roles(mains...)
+		if c.Against != nil { // for what two takes together tell, beside the difference
+			roles["against"] = []*analyze.Take{c.Against}
+		}
+		res := m.Run(&analyze.Pass{Measure: m, Params: &c.Params, Roles: roles, MainsHz: r.job.MainsHz, Stages: r.stages})
 		return r.calibrated(row, finite(res))
 	}
 	var res analyze.Result
