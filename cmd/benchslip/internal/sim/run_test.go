@@ -62,7 +62,7 @@ func TestSlipsTellTheTruth(t *testing.T) {
 				t.Errorf("%s, %s: no value: %s", name, want.Check, c.Reason)
 				continue
 			}
-			scale, ok := map[string]float64{want.Unit: 1, "mV": 1e-3, "uV": 1e-6, "uV/rtHz": 1e-6}[c.Unit]
+			scale, ok := map[string]float64{want.Unit: 1, "mV": 1e-3, "uV": 1e-6, "uV/rtHz": 1e-6, "uV/m": 1e-6}[c.Unit]
 			if !ok {
 				t.Errorf("%s, %s: in %q, the truth is in %q", name, want.Check, c.Unit, want.Unit)
 				continue

@@ -49,6 +49,7 @@ func Truths() []Truth {
 	noise := bandRMS(quiet, hum, 20, 20e3, flat)
 	add("preamp", "Output noise", dBu(noise), "dBu")
 	add("preamp", "Output noise, A-weighted", dBu(bandRMS(quiet, hum, 20, 20e3, aWeight)), "dBu")
+	add("preamp", "Equivalent input noise", dBu(noise/cmplx.Abs(gain)), "dBu")
 	add("preamp", "Noise density at 1 kHz", quiet.At(1000), "V/rtHz")
 	add("preamp", "Hum at the output", dBu(hum.Total()), "dBu")
 	add("preamp", "Hum against noise", decibel(hum.Total()/quiet.BandRMS(20, 20e3)), "dB")
@@ -68,6 +69,15 @@ func Truths() []Truth {
 	add("cable", "Gain of the receiver", decibel(lineGain), "dB")
 	add("cable", "Hum of the receiver alone", own.Hum(sourceOhm).Total()/lineGain, "V")
 	add("cable", "Hum with the run", lineHum.Total()/lineGain, "V")
+	// What the run adds: the difference of the two combs, each against the
+	// phase of its own supply.
+	added := lineHum
+	added.Harmonics = append([]Line(nil), lineHum.Harmonics...)
+	for _, l := range own.Hum(sourceOhm).Harmonics {
+		l.Turns += 0.5
+		added.Harmonics = append(added.Harmonics, l)
+	}
+	add("cable", "Pick-up along the run", added.merged().Total()/lineGain/skerryCable.Metres, "V/m")
 	add("cable", "Hum against noise", decibel(lineHum.Total()/lineQuiet.BandRMS(20, 20e3)), "dB")
 	add("cable", "Noise with the run, A-weighted", dBu(bandRMS(lineQuiet, lineHum, 20, 20e3, aWeight)), "dBu")
 	add("cable", "Noise density at 1 kHz", lineQuiet.At(1000), "V/rtHz")
