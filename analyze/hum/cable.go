@@ -88,7 +88,7 @@ func CableSummary(p *analyze.Pass, takes []*analyze.Take) (*Cable, *analyze.Refu
 			row.RMS, row.Bound = r.bound(p, c), true
 		}
 		row.Input = row.RMS / g.G
-		row.DBu = dBu.FromLinear(row.Input)
+		row.DBu = dBu.FromLinear(math.Max(row.Input, 1e-15)) // -300 dBu stands for nothing at all
 		out.Rows = append(out.Rows, row)
 	}
 	if len(out.Rows) < 2 {

@@ -147,6 +147,7 @@ func (s *shape) family() family {
 	f := s.features()
 	saw, sine := s.halfWaves()
 	half := math.Max(saw, sine)
+	thirds := over(f.triplen, 0.68, 0.03) * over(f.third, -8.5, 1.2)
 	sharp := over(f.high, 0.27, 0.03) * over(float64(f.many), 7, 0.7) * over(f.above, -12, 2)
 	fits := []struct {
 		word string
@@ -156,8 +157,8 @@ func (s *shape) family() family {
 		{fullWave, over(f.evens, 4, 1.2) * (1 - sharp)},
 		{halfWave, half * (1 - sharp)},
 		{magnetic, under(f.above, -11, 1.5) * under(f.fifth, -23.5, 1.5) * under(ratio(s.p[2]+s.p[4], s.p[1]), -14, 2) * (1 - half)},
-		{triplen, over(f.triplen, 0.76, 0.03) * over(f.third, -8.5, 1.2) * under(f.evens3, -5, 1.2) * (1 - sharp) * (1 - half)},
-		{odd, over(f.fifth, -23.5, 1.5) * under(f.triplen, 0.76, 0.03) * under(f.evens3, -5, 1.2) * (1 - sharp) * (1 - half)},
+		{triplen, thirds * under(f.evens3, -4, 1.2) * (1 - sharp) * (1 - half)},
+		{odd, over(f.fifth, -23.5, 1.5) * (1 - thirds) * under(f.evens3, -4, 1.2) * (1 - sharp) * (1 - half)},
 	}
 	best, second := 0, 1
 	for i := range fits {
@@ -207,7 +208,13 @@ func (s *shape) halfWaves() (saw, sine float64) {
 			d := db(h) - (sy-slope*sx)/n - slope*math.Log10(float64(h))
 			rough += d * d / n
 		}
-		saw = under(math.Sqrt(rough), 3.4, 0.4) * under(slope, -9, 1.5) * over(slope, -38, 2) * over(db(2)-db(1), -16, 1)
+		// Even orders lie on the line of the odd ones beside them, not below.
+		contrast, pairs := 0.0, 0.0
+		for h := 2; h < run; h += 2 {
+			contrast += db(h) - (db(h-1)+db(h+1))/2
+			pairs++
+		}
+		saw = under(math.Abs(contrast/pairs), 4, 0.5) * under(math.Sqrt(rough), 3.4, 0.4) * under(slope, -9, 1.5) * over(slope, -38, 2) * over(db(2)-db(1), -16, 1)
 	}
 	odd3 := 0.0
 	for h := 3; h <= familyOrders; h += 2 {

@@ -514,3 +514,57 @@ func TestFigures(t *testing.T) {
 		}
 	}
 }
+
+// Takes without noise, without hum, without anything give no number that is
+// none.
+func TestDegenerate(t *testing.T) {
+	for name, s := range map[string]*trial.Signal{
+		"zeros": trial.New(4000, 2), "constant": trial.New(4000, 2).DC(0.3), "pure tone": trial.New(4000, 2).Tone(440.3, 0.5, 0),
+		"pure hum": trial.New(4000, 2).Tone(50, 0.5, 0), "pure tone on an order": trial.New(4000, 2).Tone(1000, 0.5, 0),
+		"pure tone and hum": trial.New(4000, 2).Tone(50, 1e-3, 0).Tone(443, 0.5, 0),
+	} {
+		tk := trial.Take("t", s, s)
+		tk.Wiring.Mains = "2"
+		base := trial.Take("b", s, s)
+		base.Wiring.Mains = "2"
+		on := trial.Between(map[string]*analyze.Take{"take": tk, "baseline": base})
+		each := unit.New(1, "mV")
+		for _, m := range Measures() {
+			r := on.Run(m, analyze.Params{Length: length(5), MaxEach: &each, Band: &analyze.Band{Low: 20, High: 1900}})
+			if (r.Value == nil) == (r.Refusal == nil) {
+				t.Errorf("%s, %s: value %v, refusal %v", name, m.Name, r.Value, r.Refusal)
+			}
+			if r.Value != nil && !(math.Abs(*r.Value) < 1e100) || r.Bound != nil && !(r.Bound.Value < 1e100) {
+				t.Errorf("%s, %s: %v %v", name, m.Name, *r.Value, r.Bound)
+			}
+			finiteIn(t, name+", "+m.Name, r.Details)
+			for _, f := range r.Figures {
+				for _, q := range f.Series {
+					finiteIn(t, name+", "+f.ID, q.Y)
+				}
+			}
+		}
+	}
+}
+
+func finiteIn(t *testing.T, where string, v any) {
+	t.Helper()
+	switch x := v.(type) {
+	case float64:
+		if math.IsNaN(x) || math.IsInf(x, 0) {
+			t.Errorf("%s: %g", where, x)
+		}
+	case []float64:
+		for _, y := range x {
+			finiteIn(t, where, y)
+		}
+	case map[string]any:
+		for k, y := range x {
+			finiteIn(t, where+": "+k, y)
+		}
+	case []map[string]any:
+		for _, y := range x {
+			finiteIn(t, where, y)
+		}
+	}
+}
