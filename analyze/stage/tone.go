@@ -187,16 +187,10 @@ func coarseTone(p *analyze.Pass, atHz float64, s *analyze.Signal, v *Survey) (fl
 	if s.Take.Rec.Info().Kind != "audio" || T < 1 {
 		lo = 0
 	}
-	mains := findComb(v, mainsNominal(p), T, func(float64) bool { return false })
-	if mainsNominal(p) == 0 && !mains.credible(1) {
-		mains.Hz = 0 // a lone line at a high multiple is no supply
-	}
 	tol := v.ToleranceHz()
-	best, ok := v.StrongestIn(math.Max(lo, 1.2/T), hi, func(q spectrum.Peak) bool {
-		d, _ := NearMains(q.Hz, mains.Hz, 5)
-		return d > tol+0.0004*q.Hz
-	})
-	if !ok || best.Hz*T < 12 {
+	ofMains := mainsLines(v, mainsNominal(p), T, lo, hi)
+	best, ok := v.StrongestIn(math.Max(lo, 1.2/T), hi, func(q spectrum.Peak) bool { return !ofMains(q.Hz) })
+	if (!ok || best.Hz*T < 12) && 20/T > lo {
 		if hz, good := fewPeriods(s, 1.5/T, math.Min(20/T, hi)); good && (!ok || math.Abs(hz-best.Hz) < 2.5/T) {
 			return hz, nil
 		}
@@ -209,14 +203,50 @@ func coarseTone(p *analyze.Pass, atHz float64, s *analyze.Signal, v *Survey) (fl
 	}
 	// A second strong line that is no harmonic makes the choice a guess.
 	if q, two := v.StrongestIn(lo, hi, func(q spectrum.Peak) bool {
-		d, _ := NearMains(q.Hz, mains.Hz, 5)
-		return q.Hz != best.Hz && !isHarmonic(q.Hz, best.Hz, 2*tol) && !isHarmonic(best.Hz, q.Hz, 2*tol) && d > tol+0.0004*q.Hz
+		return q.Hz != best.Hz && !isHarmonic(q.Hz, best.Hz, 2*tol) && !isHarmonic(best.Hz, q.Hz, 2*tol) && !ofMains(q.Hz)
 	}); two && q.Power > best.Power/4 {
 		return 0, &analyze.Refusal{Code: analyze.AmbiguousTone,
 			Text:   fmt.Sprintf("take %q holds two strong lines, %.6g Hz and %.6g Hz", s.Take.Name, best.Hz, q.Hz),
 			Advice: "say which with `at`"}
 	}
 	return best.Hz, nil
+}
+
+// supplyStray is how far from nominal a supply is taken to run when a single
+// line is all that speaks for it: interconnected supplies keep within 0.2 Hz
+// of 50 Hz all but minutes of a year (common practice, no source).
+const supplyStray = 0.004
+
+// mainsLines tells the lines that lie on mains orders 1 to 5. The strongest
+// line of all must not draw the comb to itself, or a tone at 98.5 Hz would
+// make a supply of 49.25 Hz and hide behind it: the comb is drawn by the other
+// lines. Where there are none but its own multiples, the supply is taken to
+// run near its nominal frequency.
+func mainsLines(v *Survey, nominal, durationS, lo, hi float64) func(hz float64) bool {
+	tol := v.ToleranceHz()
+	mains := findComb(v, nominal, durationS, func(float64) bool { return false })
+	if nominal == 0 && !mains.credible(1) {
+		mains.Hz = 0 // a lone line at a high multiple is no supply
+	}
+	stray := 0.0004
+	near := func(hz float64) bool {
+		d, _ := NearMains(hz, mains.Hz, 5)
+		return d <= tol+stray*hz
+	}
+	top, ok := v.StrongestIn(lo, hi, nil)
+	if !ok || mains.Hz <= 0 || !near(top.Hz) {
+		return near
+	}
+	others := findComb(v, nominal, durationS, func(hz float64) bool { return isHarmonic(hz, top.Hz, 2*tol) })
+	if len(others.Orders) > 0 {
+		mains = others
+		return near
+	}
+	if nominal == 0 {
+		nominal = nearest(nominals, mains.Hz)
+	}
+	mains.Hz, stray = nominal, supplyStray
+	return near
 }
 
 func noToneNear(s *analyze.Signal, v *Survey, atHz float64) *analyze.Refusal {
