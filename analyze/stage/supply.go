@@ -33,6 +33,10 @@ func (c *comb) settle(v *Survey, nominal float64, skip func(hz float64) bool) {
 	if c.Hz <= 0 {
 		return
 	}
+	if c.plain(v) {
+		c.faint(v, skip)
+		return
+	}
 	lo, hi := nominal*(1-supplyRange), nominal*(1+supplyRange)
 	for _, k := range c.Orders {
 		tol := v.ToleranceHz() / float64(k)
@@ -73,6 +77,19 @@ func (c *comb) faint(v *Survey, skip func(hz float64) bool) {
 			c.Faint = append(c.Faint, o)
 		}
 	}
+}
+
+// plain: an order stands so far out that its peak places the comb better than
+// any sum, in which it counts no more than others.
+func (c *comb) plain(v *Survey) bool {
+	for _, o := range c.Orders {
+		hz := float64(o) * c.Hz
+		tol := v.ToleranceHz() + 0.0004*hz
+		if p, ok := v.StrongestIn(hz-tol, hz+tol, nil); ok && p.Power > mostSay*p.Floor*v.RBW() {
+			return true
+		}
+	}
+	return false
 }
 
 // onSkirt: a peak stands beside hz, so near that the window's lobe reaches

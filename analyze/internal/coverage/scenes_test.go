@@ -109,10 +109,10 @@ func square(u []float64) float64 {
 	return p
 }
 
-// floor is the mean square of what the recorder itself adds: rounding with
-// triangular dither, half a step RMS.
+// floor is the mean square of what the recorder itself adds, in true volts at
+// its input: rounding with triangular dither, half a step RMS.
 func (b *bench) floor() float64 {
-	q := b.full * math.Exp2(float64(1-b.bits))
+	q := b.full / (1 + b.scale) * math.Exp2(float64(1-b.bits))
 	return q * q / 4
 }
 
