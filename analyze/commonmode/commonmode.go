@@ -296,6 +296,7 @@ func (pt point) details() map[string]any {
 	e["common_gain_db"] = dB.FromLinear(cmplx.Abs(pt.gd) / pt.value)
 	if pt.phases {
 		e["common_phase_deg"] = cmplx.Phase(pt.gc) * 180 / math.Pi
+		e["in_phase"], e["quadrature"] = real(pt.turned()), imag(pt.turned())
 	}
 	return e
 }

@@ -131,7 +131,7 @@ func runEIN(p *analyze.Pass) analyze.Result {
 	r.Details = map[string]any{"band_hz": []float64{b.Low, b.High}, "weighting": weightingName(p.Params.Weighting), "detector": "RMS",
 		"span_s": spanOf(s), "averages": n.lines.Noise.Averages, "gain_db": dB.FromLinear(g.G), "noise_v": volts,
 		"plane": plane(p.Params), "thermal_dbu": nil, "noise_figure_db": nil,
-		"hum_v": math.Sqrt(math.Max(stage.LinesIn(n.band, curve, n.lines.Mains).P, 0)) / g.G}
+		"hum_v": math.Sqrt(math.Max(stage.LinesIn(n.band, curve, n.lines.Mains).P, 0)) / g.G * up}
 	n.character(p, &r, g.G/up)
 	for k, d := range floor.Details {
 		r.Details[k] = d
