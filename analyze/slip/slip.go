@@ -28,6 +28,9 @@ type Slip struct {
 	// Order of the free keys as typed, for the sheet.
 	UnitKeys, RecordKeys []string `json:"-"`
 	Title                string   `json:"title"`
+
+	// Redacted names the fields whose texts were withheld; none in most slips.
+	Redacted []string `json:"redacted,omitempty"`
 }
 
 // Tool names the program.

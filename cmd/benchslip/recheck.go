@@ -28,6 +28,7 @@ Exit status: 0 same, or same within rounding; 1 it differs; 2 it could not run.`
 	f := cmd.Flags()
 	f.SortFlags = false
 	f.StringVar(&jobPath, "job", "", "the job `FILE`, where it does not lie beside the slip's folder")
+	f.StringVar(&o.takeRoot, "takes", "", "the `DIR` that the takes lie in, for the slip of one of several units")
 	f.BoolVar(&o.allowOutside, "allow-outside", false, "let takes lie outside the job's folder")
 	o.addWorkers(cmd)
 	cmd.RunE = func(cmd *cobra.Command, args []string) error {
@@ -53,7 +54,11 @@ Exit status: 0 same, or same within rounding; 1 it differs; 2 it could not run.`
 				return usagef("%s: its job %s does not lie beside its folder; name it with --job FILE", args[0], name)
 			}
 		}
-		again, err := a.slipOf(cmd.Context(), path, o)
+		o.redact = s.Redacted
+		if o.takeRoot != "" {
+			o.unit = s.Unit[unitKey]
+		}
+		again, _, err := a.slipOf(cmd.Context(), path, o)
 		if again == nil || err != nil {
 			return err
 		}
