@@ -80,6 +80,8 @@ func Run(ctx context.Context, j *job.Job, opt Options) (*slip.Slip, error) {
 		return nil, err
 	}
 	byGain(s.Checks, rows)
+	r.compareSetups(s.Checks, rows)
+	sayOnce(s.Checks)
 	for i, t := range j.Takes {
 		s.Takes[i] = intake.Entry(t)
 	}
