@@ -5,6 +5,7 @@ import (
 	"benchslip/analyze"
 	"benchslip/analyze/channels"
 	"benchslip/analyze/commonmode"
+	"benchslip/analyze/events"
 	"benchslip/analyze/hum"
 	"benchslip/analyze/impedance"
 	"benchslip/analyze/level"
@@ -29,6 +30,7 @@ func All() []*analyze.Measure {
 		channels.Measures(),
 		impedance.Measures(),
 		oneshot.Measures(),
+		events.Measures(),
 	} {
 		all = append(all, list...)
 	}
