@@ -147,7 +147,7 @@ func sources(in []Input) []Source {
 	for _, by := range []func(Source) string{
 		func(s Source) string { return s.Serial },
 		func(s Source) string { return s.Date },
-		func(s Source) string { return s.File },
+		func(s Source) string { return short(s.File, out) },
 	} {
 		seen := map[string]bool{}
 		for _, s := range out {
@@ -165,6 +165,28 @@ func sources(in []Input) []Source {
 		out[i].Label = fmt.Sprintf("slip %d", i+1)
 	}
 	return out
+}
+
+// short is a path without the folders that all paths share, and without the
+// name that every slip has.
+func short(path string, all []Source) string {
+	parts := strings.Split(path, "/")
+	from := len(parts) - 1
+	for _, s := range all {
+		other := strings.Split(s.File, "/")
+		n := 0
+		for n < len(parts)-1 && n < len(other)-1 && parts[n] == other[n] {
+			n++
+		}
+		if s.File != path {
+			from = min(from, n)
+		}
+	}
+	name := strings.Join(parts[from:], "/")
+	if trimmed := strings.TrimSuffix(name, "/slip.json"); trimmed != "" {
+		return trimmed
+	}
+	return path
 }
 
 func checkOf(s *slip.Slip, name string) *slip.Check {

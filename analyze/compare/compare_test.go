@@ -244,6 +244,18 @@ func TestTrend(t *testing.T) {
 	}
 }
 
+func TestLabels(t *testing.T) {
+	s := func() *slip.Slip { return slipOf(check("C", "V", 1, 0.1, 0)) }
+	r, err := Make([]Input{{"/x/before/slip.json", s()}, {"/x/after/slip.json", s()}})
+	if err != nil || r.Slips[0].Label != "before" || r.Slips[1].Label != "after" {
+		t.Errorf("%v, %+v", err, r.Slips)
+	}
+	r, _ = Make([]Input{{"/x/slip.json", s()}, {"/x/slip.json", s()}})
+	if r.Slips[0].Label == r.Slips[1].Label {
+		t.Errorf("one label for two slips: %q", r.Slips[0].Label)
+	}
+}
+
 // The worst comes first, and two slips or more are needed.
 func TestOrderOfRows(t *testing.T) {
 	row := func(name string, v float64, max *float64) slip.Check {
