@@ -71,19 +71,17 @@ func (st *stretch) classify(c cluster) (e event, at int) {
 	rate := st.sc.rate
 	at = st.start(c)
 	dB := func(s sign) float64 { return 20 / math.Ln10 * s.ln }
-	// Changes are placed to within a period; a spike beside them says better.
+	// Changes are placed to within a period; the largest spike beside them says
+	// better.
 	placed := func(s sign) int {
 		near := int(0.012 * rate)
-		best := -1
+		best := sign{at: s.at}
 		for _, q := range c.signs {
-			if q.what == spike && q.at > s.at-near && q.at < s.at+near && (best < 0 || st.size(q) > st.size(c.signs[best])) {
-				best = indexOf(c.signs, q)
+			if q.what == spike && q.at > s.at-near && q.at < s.at+near && q.size > best.size {
+				best = q
 			}
 		}
-		if best >= 0 {
-			return c.signs[best].at
-		}
-		return s.at
+		return best.at
 	}
 	if s, ok := c.of(toneStep); ok {
 		return event{kind: "step", size: s.size, dB: dB(s), rank: rankStep}, placed(s)
@@ -123,17 +121,6 @@ func (st *stretch) classify(c cluster) (e event, at int) {
 		return event{kind: "burst", size: st.excess(c), lasts: float64(c.to-at) / rate, rank: rankBurst}, at
 	}
 	return event{kind: "click", size: st.peak(c), rank: rankClick}, at
-}
-
-func (st *stretch) size(s sign) float64 { return math.Abs(s.size) }
-
-func indexOf(list []sign, s sign) int {
-	for i, q := range list {
-		if q == s {
-			return i
-		}
-	}
-	return -1
 }
 
 // start of a cluster: its first spike, or where the errors change first.
@@ -197,8 +184,9 @@ func (st *stretch) meanSquare(a, b int) (v float64) {
 	return v / float64(max(b-a, 1))
 }
 
-// background is the tone and the first mains lines before a cluster, carried on
-// through it; what is left of the signal from a to b.
+// left is the signal from a to b without its background: the tone with two
+// harmonics and the first mains lines of the tenth of a second before, carried
+// on; and the noise that they left there, RMS.
 func (st *stretch) left(a, b int) (rest []float64, noise float64) {
 	rate := st.sc.rate
 	long := int(0.1 * rate)

@@ -93,7 +93,7 @@ func decimate(x []float64, n int) []float64 {
 	return y
 }
 
-// rms of a peak phasor, squared.
+// meanSquareOf a line of a peak phasor.
 func meanSquareOf(z complex128) float64 {
 	return (real(z)*real(z) + imag(z)*imag(z)) / 2
 }

@@ -160,7 +160,7 @@ func settle(list []event) []event {
 	})
 	var out []event
 	for _, e := range list {
-		if n := len(out); n > 0 && e.at-(out[n-1].at+math.Min(out[n-1].lasts, 0)) < together {
+		if n := len(out); n > 0 && e.at-out[n-1].at < together {
 			last := &out[n-1]
 			at := last.at
 			if e.rank < last.rank {

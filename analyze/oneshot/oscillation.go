@@ -6,6 +6,7 @@ import (
 
 	"benchslip/analyze"
 	"benchslip/analyze/internal/budget"
+	"benchslip/capture/unit"
 )
 
 var oscillation = &analyze.Measure{
@@ -107,10 +108,11 @@ func (w *swing) result(s *analyze.Signal, x []float64, above float64) analyze.Re
 		r.Details["course"], r.Details["bursts"] = "continuous", 0
 		r.Details["from_s"], r.Details["to_s"] = s.StartS, s.StartS+s.DurationS()
 	}
-	what := fmt.Sprintf("a line at %.4g Hz", w.hz)
+	in := func(hz float64) string { return unit.Format(hz, unit.MustLookup("Hz"), 0) }
+	what := "a line at " + in(w.hz)
 	if w.band != nil {
 		r.Details["band_hz"] = []float64{w.band[0], w.band[1]}
-		what = fmt.Sprintf("a hump from %.4g Hz to %.4g Hz", w.band[0], w.band[1])
+		what = "a hump from " + in(w.band[0]) + " to " + in(w.band[1])
 	}
 	r.Opinions = []string{fmt.Sprintf("%s that is no harmonic of the signal is consistent with an unstable stage: decoupling far from the pins or with long leads "+
 		"(lead inductance), a capacitive load without a series resistor, or a regulator without its output capacitor; to confirm, hold 100 nF with the shortest leads "+
