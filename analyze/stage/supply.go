@@ -129,15 +129,3 @@ func (c *comb) says(v *Survey, f float64, skip func(hz float64) bool) float64 {
 	}
 	return sum
 }
-
-// beside: hz lies within the window's main lobe of a place that skip names,
-// where the survey shows that line's flank.
-func beside(v *Survey, hz float64, skip func(hz float64) bool) bool {
-	lobe := v.Lobe * v.StepHz
-	for d := -lobe; d <= lobe; d += lobe / 8 {
-		if skip(hz + d) {
-			return true
-		}
-	}
-	return false
-}
