@@ -276,6 +276,14 @@ var healthy = []struct {
 	{"60 Hz and 7 kHz with products, output alone", func() Subject {
 		return audio(silent(48000, 3).Tone(60, 0.4, 0).Tone(120, 1e-3, 0).Tone(180, 2e-3, 1).Tone(300, 1e-3, 1).Tone(7000, 0.1, 1).Tone(7060, 1e-3, 0).Noise(1e-5, 22))
 	}},
+	{"a tone with a burst of noise", func() Subject {
+		s := silent(48000, 4).Tone(1042.01, 0.2, 0).Noise(1e-5, 90)
+		loud := silent(48000, 0.05).Noise(0.05, 91)
+		for i, v := range loud.X {
+			s.X[90000+i] += v
+		}
+		return audio(s)
+	}},
 	{"two tones 1 kHz apart", func() Subject {
 		return audio(silent(48000, 3).Tone(19000, 0.2, 0).Tone(20000, 0.2, 1).Noise(1e-5, 24))
 	}},

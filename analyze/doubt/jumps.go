@@ -113,7 +113,8 @@ func (f *frames) level(i int) bool {
 
 // place finds the sample at which the tone of the frames before i goes over
 // into that of the frames after it, and by how much its phase jumps there.
-// sharp: such a change explains the samples far better than a smooth one.
+// sharp: such a change explains the samples far better than a smooth one, and
+// leaves little of them.
 func (l *listening) place(i int) (at int, jump float64, sharp bool) {
 	f := l.frames
 	first := (i - 1) * f.n
@@ -150,7 +151,10 @@ func (l *listening) place(i int) (at int, jump float64, sharp bool) {
 		e := v - mean - a*math.Cos(before.phase(n)+w*math.Remainder(after.phase(n)-before.phase(n), 2*math.Pi))
 		smooth += e * e
 	}
-	return at, jump, best < smooth
+	// A burst of noise shifts the readings of the phase too: what is left must
+	// be well under what the jump itself makes.
+	made := 2 * math.Sin(math.Abs(jump)/2) * (before.amp + after.amp) / 2
+	return at, jump, best < smooth && best/float64(len(x)) < made*made/8
 }
 
 // model is a tone of one frequency: amp cos(start + turn n).

@@ -92,12 +92,12 @@ func (st *stretch) classify(c cluster) (e event, at int) {
 	if isGone && !st.weaker(missing) {
 		isGone = false // a loud click disturbs the reading of the tone
 	}
-	if isLost || isGone || isFaint {
+	if isLost || isGone || isFaint || st.hollow(c) {
 		e = event{kind: "dropout", rank: rankDropout}
 		switch {
 		case isGone:
 			e.size, e.lasts = missing.size, float64(c.to-c.from)/rate
-		case isFaint:
+		case isFaint || !isLost:
 			e.size, e.lasts = st.lacks(c), float64(c.to-c.from)/rate
 		default:
 			e.size = lost.size
@@ -163,6 +163,23 @@ func (st *stretch) lasting(c cluster) float64 {
 func (st *stretch) weaker(s sign) bool {
 	long := max(s.to-s.at, 1)
 	return st.meanSquare(s.at, s.to) < 0.8*st.meanSquare(s.at-8*long, s.at-3*long)
+}
+
+// hollow: somewhere in the cluster the signal holds under a tenth of its
+// earlier power for two periods of the tone.
+func (st *stretch) hollow(c cluster) bool {
+	hz := st.sc.toneHz
+	if hz <= 0 {
+		return false
+	}
+	w := int(2 * st.sc.rate / hz)
+	before := st.meanSquare(c.from-10*w, c.from-2*w)
+	for a := c.from; a+w <= c.to; a += max(w/4, 1) {
+		if st.meanSquare(a, a+w) < 0.1*before {
+			return true
+		}
+	}
+	return false
 }
 
 // lacks is the RMS that the signal lacks during a cluster, against before.
