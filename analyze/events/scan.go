@@ -146,6 +146,10 @@ func (sc *scan) stretch(x []float64, from, a, b int) []event {
 	return out
 }
 
+// humTogether, s: where the supply is not stated, one change of hum shows in
+// the readings at 50 and at 60 Hz, which are placed this far apart.
+const humTogether = 0.1
+
 // settle puts events in order and makes one of those nearer than 20 ms; a
 // change of the noise that is taken back within half a minute is a burst.
 func settle(list []event) []event {
@@ -160,7 +164,7 @@ func settle(list []event) []event {
 	})
 	var out []event
 	for _, e := range list {
-		if n := len(out); n > 0 && e.at-out[n-1].at < together {
+		if n := len(out); n > 0 && (e.at-out[n-1].at < together || e.kind == "hum" && out[n-1].kind == "hum" && e.at-out[n-1].at < humTogether) {
 			last := &out[n-1]
 			at := last.at
 			if e.rank < last.rank {
