@@ -13,6 +13,7 @@ import (
 type progress struct {
 	app   *app
 	on    bool
+	each  bool // every step on a line of its own, terminal or not
 	begun time.Time
 	last  time.Time
 	shown int // length of the line that stands there
@@ -31,6 +32,10 @@ func newProgress(a *app, quiet bool) *progress {
 // step is told of each finished step.
 func (p *progress) step(done, all int, what string) {
 	now := time.Now()
+	if p.each {
+		fmt.Fprintln(p.app.err, printable(fmt.Sprintf("%.1f s: %d of %d: %s", now.Sub(p.begun).Seconds(), done, all, what)))
+		return
+	}
 	if !p.on || now.Sub(p.begun) < progressAfter || now.Sub(p.last) < progressEvery {
 		return
 	}

@@ -22,6 +22,7 @@ import (
 type runOptions struct {
 	out          string
 	json, quiet  bool
+	verbose      bool
 	workers      int
 	allowOutside bool
 
@@ -62,6 +63,7 @@ relative to that: one slip a unit, and a summary of all.`,
 	f.StringVarP(&o.out, "out", "o", "", "write the slip into `DIR`")
 	f.BoolVar(&o.json, "json", false, "print slip.json to stdout instead of the summary")
 	f.BoolVar(&o.quiet, "quiet", false, "print no summary and no progress")
+	f.BoolVar(&o.verbose, "verbose", false, "print each step as it ends to stderr")
 	f.BoolVar(&o.allowOutside, "allow-outside", false, "let takes lie outside the job's folder")
 	f.StringVar(&o.units, "units", "", "run the job for each subfolder of `DIR`")
 	f.StringSliceVar(&o.redact, "redact", nil, "withhold the texts of `FIELDS` of unit and record, like operator,customer")
@@ -177,6 +179,7 @@ func (a *app) slipOf(ctx context.Context, path string, o *runOptions) (*slip.Sli
 		return nil, nil, nil
 	}
 	bar := newProgress(a, o.quiet)
+	bar.each = o.verbose && !o.quiet
 	s, err := run.Run(ctx, j, run.Options{Workers: o.workers, Version: version, Progress: bar.step})
 	bar.done()
 	if err != nil {

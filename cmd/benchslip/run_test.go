@@ -113,6 +113,9 @@ func TestRunJSONIsTheFile(t *testing.T) {
 	if stdout != string(data) {
 		t.Error("--json does not print slip.json")
 	}
+	if status, _, stderr := call(t, "run", path, "--verbose"); status != 0 || !strings.Contains(stderr, "measured ") {
+		t.Errorf("--verbose: status %d, stderr %q", status, stderr)
+	}
 	if status, stdout, stderr := call(t, "run", path, "--quiet"); status != 0 || stdout != "" || stderr != "" {
 		t.Errorf("--quiet: status %d, %q, %q", status, stdout, stderr)
 	}
