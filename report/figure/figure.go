@@ -16,6 +16,8 @@ import (
 	"math"
 	"strconv"
 	"strings"
+	"unicode"
+	"unicode/utf8"
 
 	xfont "golang.org/x/image/font"
 	"gonum.org/v1/plot"
@@ -216,10 +218,24 @@ func tenths(b *bytes.Buffer, svg string) {
 
 func escape(s string) string { return html.EscapeString(report.Clean(s)) }
 
-// Caption joins a figure's own caption and the remarks of drawing it.
+// Caption joins a figure's own caption and the remarks of drawing it, each a
+// sentence.
 func Caption(f *analyze.Figure, remarks []string) string {
-	parts := append([]string{strings.TrimSpace(report.Clean(f.Caption))}, remarks...)
+	parts := append([]string{sentence(strings.TrimSpace(report.Clean(f.Caption)))}, remarks...)
 	return strings.TrimSpace(strings.Join(parts, " "))
+}
+
+// sentence begins s with a capital and ends it with a full stop.
+func sentence(s string) string {
+	if s == "" {
+		return s
+	}
+	first, size := utf8.DecodeRuneInString(s)
+	s = string(unicode.ToUpper(first)) + s[size:]
+	if !strings.HasSuffix(s, ".") {
+		s += "."
+	}
+	return s
 }
 
 // cut shortens s with an ellipsis so that it is no wider than width.
