@@ -276,6 +276,16 @@ var healthy = []struct {
 	{"60 Hz and 7 kHz with products, output alone", func() Subject {
 		return audio(silent(48000, 3).Tone(60, 0.4, 0).Tone(120, 1e-3, 0).Tone(180, 2e-3, 1).Tone(300, 1e-3, 1).Tone(7000, 0.1, 1).Tone(7060, 1e-3, 0).Noise(1e-5, 22))
 	}},
+	{"hum whose harmonics wander in phase", func() Subject {
+		s := silent(48000, 10).Noise(1e-6, 92).Swing(50.01, 1.4e-4, func(x float64) float64 { return 0.2 * math.Sin(x/2) })
+		for k, a := range []float64{7e-6, 8.5e-5, 3e-6, 7e-5, 3e-6, 5e-5} {
+			order := float64(k + 2)
+			s.Swing(order*50.01, a, func(x float64) float64 {
+				return order*0.2*math.Sin(x/2) + 0.3*math.Sin(1.3*x+order) + 0.2*math.Sin(4.1*x+2*order) + 0.1*math.Sin(11*x+order)
+			})
+		}
+		return audio(s)
+	}},
 	{"a tone with a burst of noise", func() Subject {
 		s := silent(48000, 4).Tone(1042.01, 0.2, 0).Noise(1e-5, 90)
 		loud := silent(48000, 0.05).Noise(0.05, 91)

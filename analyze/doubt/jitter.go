@@ -88,7 +88,7 @@ func (f *frames) crossings(x []float64) (power, contrast float64, ok bool) {
 		sum[b] += left[i]
 		many[b]++
 	}
-	all := 0.0
+	all, steps, last := 0.0, 0.0, 0.0
 	for i := range left {
 		b := int((theta[i]/(2*math.Pi)+0.5)*phaseBins) % phaseBins
 		if many[b] < 8 {
@@ -96,9 +96,13 @@ func (f *frames) crossings(x []float64) (power, contrast float64, ok bool) {
 		}
 		r := left[i] - sum[b]/float64(many[b])
 		all += r * r
+		steps += (r - last) * (r - last)
+		last = r
 		contrast -= r * r * math.Cos(2*theta[i])
 	}
-	if all == 0 || all > 0.1*amp*amp*float64(len(x)) {
+	// Scattered instants differ from sample to sample, so that what they add
+	// is white: steps twice its power. Hum whose phases wander is slow.
+	if all == 0 || steps < all || all > 0.1*amp*amp*float64(len(x)) {
 		return 0, 0, false
 	}
 	return all / float64(len(x)) / (amp * amp), contrast / all, true
