@@ -2,6 +2,7 @@ package doubt
 
 import (
 	"math"
+	"math/rand/v2"
 	"slices"
 	"strings"
 	"testing"
@@ -276,16 +277,8 @@ var healthy = []struct {
 	{"60 Hz and 7 kHz with products, output alone", func() Subject {
 		return audio(silent(48000, 3).Tone(60, 0.4, 0).Tone(120, 1e-3, 0).Tone(180, 2e-3, 1).Tone(300, 1e-3, 1).Tone(7000, 0.1, 1).Tone(7060, 1e-3, 0).Noise(1e-5, 22))
 	}},
-	{"hum whose harmonics wander in phase", func() Subject {
-		s := silent(48000, 10).Noise(1e-6, 92).Swing(50.01, 1.4e-4, func(x float64) float64 { return 0.2 * math.Sin(x/2) })
-		for k, a := range []float64{7e-6, 8.5e-5, 3e-6, 7e-5, 3e-6, 5e-5} {
-			order := float64(k + 2)
-			s.Swing(order*50.01, a, func(x float64) float64 {
-				return order*0.2*math.Sin(x/2) + 0.3*math.Sin(1.3*x+order) + 0.2*math.Sin(4.1*x+2*order) + 0.1*math.Sin(11*x+order)
-			})
-		}
-		return audio(s)
-	}},
+	{"hum whose harmonics wander in phase", func() Subject { return wanderingHum(5) }},
+	{"hum whose harmonics wander in phase, again", func() Subject { return wanderingHum(14) }},
 	{"a tone with a burst of noise", func() Subject {
 		s := silent(48000, 4).Tone(1042.01, 0.2, 0).Noise(1e-5, 90)
 		loud := silent(48000, 0.05).Noise(0.05, 91)
@@ -516,4 +509,29 @@ func plain(list []Finding) []recording.Flag {
 		out = append(out, f.Flag)
 	}
 	return out
+}
+
+// wanderingHum is an odd set of mains harmonics whose phases walk against the
+// fundamental, by 0.03 rad RMS in a tenth of a second.
+func wanderingHum(seed uint64) Subject {
+	r := rand.New(rand.NewPCG(seed, 6))
+	walk := func() func(float64) float64 {
+		at := make([]float64, 120)
+		for i := 1; i < len(at); i++ {
+			at[i] = at[i-1] + 0.03*r.NormFloat64()
+		}
+		return func(x float64) float64 {
+			i := int(x * 10)
+			return at[i] + (x*10-float64(i))*(at[i+1]-at[i])
+		}
+	}
+	s := silent(48000, 10).Noise(1e-6, seed)
+	for k, a := range []float64{1, 0.05, 0.6, 0.02, 0.5, 0.02, 0.35} {
+		phase, wander := r.Float64()*6, walk()
+		if k == 0 {
+			wander = func(float64) float64 { return 0 }
+		}
+		s.Swing(float64(k+1)*50.003, 1.4e-4*a, func(x float64) float64 { return phase + wander(x) })
+	}
+	return audio(s)
 }
