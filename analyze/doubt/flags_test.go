@@ -279,6 +279,9 @@ var healthy = []struct {
 	}},
 	{"hum whose harmonics wander in phase", func() Subject { return wanderingHum(5) }},
 	{"hum whose harmonics wander in phase, again", func() Subject { return wanderingHum(14) }},
+	{"a tone of 59.4 Hz with harmonics", func() Subject {
+		return audio(silent(48000, 4).Tone(59.44, 0.2, 0).Tone(118.88, 2e-4, 1).Tone(178.32, 6e-5, 2).Noise(1e-6, 93))
+	}},
 	{"a tone with a burst of noise", func() Subject {
 		s := silent(48000, 4).Tone(1042.01, 0.2, 0).Noise(1e-5, 90)
 		loud := silent(48000, 0.05).Noise(0.05, 91)

@@ -34,13 +34,21 @@ func supply(l *listening) []Finding {
 			continue
 		}
 		orders, power, at := l.comb(hz, tone, l.MainsHz)
-		if orders < leastOrders || power < stronger*own || l.pair(at) {
+		if orders < leastOrders || power < stronger*own || l.pair(at) || l.pure(at, power) {
 			continue
 		}
 		return []Finding{l.found(recording.MainsUnlike, 0, l.sig.Len(),
 			fmt.Sprintf("%d harmonics of %.4g Hz stand out of the noise, and little or none of the job's %.4g Hz: set [mains] frequency, or check the take", orders, at, l.MainsHz))}
 	}
 	return nil
+}
+
+// pure: the line at hz holds all but a ten thousandth of the comb's power. So
+// clean is a test tone near the supply's frequency, not a supply.
+func (l *listening) pure(hz, power float64) bool {
+	tol := l.survey.ToleranceHz()
+	low, ok := l.survey.StrongestIn(hz-tol-4e-4*hz, hz+tol+4e-4*hz, nil)
+	return ok && power-low.Power < 1e-4*power
 }
 
 // pair: the line at hz is the low tone of a tone pair, 60 Hz of the modulation
