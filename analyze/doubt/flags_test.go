@@ -282,6 +282,13 @@ var healthy = []struct {
 	{"a tone of 59.4 Hz with harmonics", func() Subject {
 		return audio(silent(48000, 4).Tone(59.44, 0.2, 0).Tone(118.88, 2e-4, 1).Tone(178.32, 6e-5, 2).Noise(1e-6, 93))
 	}},
+	{"a square wave whose edges fall between samples", func() Subject {
+		s := silent(50000, 1).Noise(4e-3, 94)
+		for i := range s.X {
+			s.X[i] += math.Copysign(0.5, math.Sin(2*math.Pi*121.107*float64(i)/s.Rate+0.3))
+		}
+		return audio(s)
+	}},
 	{"a tone with a burst of noise", func() Subject {
 		s := silent(48000, 4).Tone(1042.01, 0.2, 0).Noise(1e-5, 90)
 		loud := silent(48000, 0.05).Noise(0.05, 91)

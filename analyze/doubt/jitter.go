@@ -78,6 +78,15 @@ func (f *frames) crossings(x []float64) (power, contrast float64, ok bool) {
 	}
 	var sum [phaseBins]float64
 	var many [phaseBins]int
+	// The edges of a square wave fall between samples, one way or the other:
+	// only what is nearly a sine tells. A square wave's fundamental holds 81 %.
+	whole := 0.0
+	for _, v := range x {
+		whole += (v - mean) * (v - mean)
+	}
+	if amp*amp/2*float64(len(x)) < 0.9*whole {
+		return 0, 0, false
+	}
 	theta := make([]float64, len(x))
 	left := make([]float64, len(x))
 	for i, v := range x {

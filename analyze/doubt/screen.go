@@ -21,6 +21,11 @@ func averaged(l *listening) []Finding {
 	if l.kind != recording.Scope || l.sig.Len() < leastSweep {
 		return nil
 	}
+	// A tone of few samples a period, and its lines folded back, make lobes and
+	// gaps of their own.
+	if l.tone() > 0.05*l.sig.RateHz {
+		return nil
+	}
 	f := l.quietest()
 	at := func(nu, half float64) float64 {
 		return f.medianOf((nu-half)*l.sig.RateHz, (nu+half)*l.sig.RateHz)
