@@ -14,6 +14,18 @@ const (
 	leastSweep  = 2000
 )
 
+// zerosRepeat: the density dips at the further multiples of 1/m too, as a
+// running mean makes it and the gaps between a signal's own lines need not.
+func zerosRepeat(at func(nu, half float64) float64, m int) bool {
+	first := 1 / float64(m)
+	for k := 2.0; (k+0.5)*first < 0.48; k++ {
+		if at(k*first, 0.03*first) > at((k+0.43)*first, 0.06*first)/4 {
+			return false
+		}
+	}
+	return true
+}
+
 // averaged looks for the mark of a running mean over m samples in the noise:
 // its density follows (sin(pi m f)/(m sin(pi f)))^2, f in cycles a sample, with
 // zeros at every 1/m and a lobe of -13.3 dB between the first two.
@@ -44,7 +56,7 @@ func averaged(l *listening) []Finding {
 			continue
 		}
 		low := at(0.5*first, 2*half) / shape(0.5*first)
-		if off(lobe/base, shape(1.43*first)) < 3 && off(low/base, 1) < 2 && zero < lobe/10 {
+		if off(lobe/base, shape(1.43*first)) < 3 && off(low/base, 1) < 2 && zero < lobe/10 && zerosRepeat(at, m) {
 			return []Finding{l.found(recording.Averaged, 0, l.sig.Len(),
 				fmt.Sprintf("the noise has zeros at multiples of 1/%d of the sample rate, %.0f dB deep, with lobes between them: a running mean over %d samples; switch smoothing or averaging off",
 					m, 10*math.Log10(lobe/zero), m))}
