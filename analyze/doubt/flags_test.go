@@ -282,6 +282,7 @@ var healthy = []struct {
 	{"a tone of 59.4 Hz with harmonics", func() Subject {
 		return audio(silent(48000, 4).Tone(59.44, 0.2, 0).Tone(118.88, 2e-4, 1).Tone(178.32, 6e-5, 2).Noise(1e-6, 93))
 	}},
+	{"a square wave of 82 samples on a screen", func() Subject { return squareScreen(12174.9, 1e6, 2500, 95) }},
 	{"a square wave whose edges fall between samples", func() Subject {
 		s := silent(50000, 1).Noise(4e-3, 94)
 		for i := range s.X {
@@ -544,4 +545,14 @@ func wanderingHum(seed uint64) Subject {
 		s.Swing(float64(k+1)*50.003, 1.4e-4*a, func(x float64) float64 { return phase + wander(x) })
 	}
 	return audio(s)
+}
+
+// squareScreen is a square wave of 3 V pp with noise, 12 bits over 4 V.
+func squareScreen(hz, rate float64, samples int, seed uint64) Subject {
+	s := silent(rate, float64(samples)/rate).Noise(4e-3, seed)
+	for i := range s.X {
+		v := s.X[i] + 1.5*math.Copysign(1, math.Sin(2*math.Pi*hz*float64(i)/rate+0.3))
+		s.X[i] = math.Round(v*1024) / 1024
+	}
+	return screen(s)
 }
